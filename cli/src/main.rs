@@ -1,0 +1,2 @@
+//! The `backlit` program.
+fn main() {}

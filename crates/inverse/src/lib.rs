@@ -1,0 +1,1 @@
+//! The inverse: from a spectrum and a setup to values, uncertainties and flags.

@@ -1,0 +1,1 @@
+//! Elements, levels, lines and partition functions: the built-in catalogue and readers of line lists.

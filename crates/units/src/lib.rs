@@ -1,0 +1,1 @@
+//! Constants, units, spectral axes, air and vacuum wavelengths, Doppler shifts.

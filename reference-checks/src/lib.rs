@@ -1,0 +1,1 @@
+//! Published values beside their sources: one file a subject in `tests/`.
