@@ -1,1 +1,3 @@
 //! The inverse: from a spectrum and a setup to values, uncertainties and flags.
+
+pub mod setup;
