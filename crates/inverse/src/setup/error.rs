@@ -22,7 +22,7 @@ pub enum SetupError {
     #[error("{place} is not valid TOML: {message}\nhint: {hint}")]
     Toml {
         /// The line where the parser stopped.
-        place: Place,
+        place: Box<Place>,
         /// What the TOML parser said.
         message: String,
         /// What usually causes this.
@@ -32,7 +32,7 @@ pub enum SetupError {
     #[error("unknown key `{}` ({place})\nhint: {}", place.key, unknown_key_hint(nearest.as_deref(), belongs_in.as_deref(), known))]
     UnknownKey {
         /// The key.
-        place: Place,
+        place: Box<Place>,
         /// The known key of the same section that looks most like it.
         nearest: Option<String>,
         /// The section to which a key of exactly this name belongs.
@@ -44,7 +44,7 @@ pub enum SetupError {
     #[error("key `{}` is missing ({} line {})\nhint: {hint}", place.key, place.path.display(), place.line)]
     MissingKey {
         /// The missing key and the line of its section.
-        place: Place,
+        place: Box<Place>,
         /// What to write.
         hint: &'static str,
     },
@@ -52,7 +52,7 @@ pub enum SetupError {
     #[error("found {got} where {need} is expected ({place})\nhint: {hint}")]
     WrongKind {
         /// The key.
-        place: Place,
+        place: Box<Place>,
         /// What the file has.
         got: String,
         /// What should be there.
@@ -67,7 +67,7 @@ pub enum SetupError {
     )]
     OutOfRange {
         /// The key.
-        place: Place,
+        place: Box<Place>,
         /// The name of the quantity.
         quantity: &'static str,
         /// The number found.
@@ -86,7 +86,7 @@ pub enum SetupError {
     )]
     BoundsReversed {
         /// The key.
-        place: Place,
+        place: Box<Place>,
         /// The name of the quantity.
         quantity: &'static str,
         /// The first bound.
@@ -103,7 +103,7 @@ pub enum SetupError {
     )]
     StartOutside {
         /// The key.
-        place: Place,
+        place: Box<Place>,
         /// The name of the quantity.
         quantity: &'static str,
         /// The start.
@@ -121,7 +121,7 @@ pub enum SetupError {
     )]
     RangeReversed {
         /// The key.
-        place: Place,
+        place: Box<Place>,
         /// Which of the ranges, from 1.
         index: usize,
         /// The first wavelength.
@@ -133,7 +133,7 @@ pub enum SetupError {
     #[error("the list is empty ({place})\nhint: {hint}")]
     EmptyList {
         /// The key.
-        place: Place,
+        place: Box<Place>,
         /// What to do.
         hint: &'static str,
     },
@@ -141,7 +141,7 @@ pub enum SetupError {
     #[error("unknown word \"{got}\", expected {} ({place})\nhint: {}", word_list(allowed), word_hint(nearest.as_deref(), allowed))]
     UnknownWord {
         /// The key.
-        place: Place,
+        place: Box<Place>,
         /// The word found.
         got: String,
         /// The words that are known.
@@ -153,7 +153,7 @@ pub enum SetupError {
     #[error("unit \"{got}\" is not understood ({place}): {source}")]
     Unit {
         /// The key.
-        place: Place,
+        place: Box<Place>,
         /// The text found.
         got: String,
         /// What the reader of units said.
@@ -163,7 +163,7 @@ pub enum SetupError {
     #[error("{what} is not available in this version ({place})\nhint: {hint}")]
     NotAvailable {
         /// The key.
-        place: Place,
+        place: Box<Place>,
         /// What was asked.
         what: &'static str,
         /// What to use in its place.
@@ -173,7 +173,7 @@ pub enum SetupError {
     #[error("key `{}` has no meaning beside {beside} ({place})\nhint: {hint}", place.key)]
     Conflict {
         /// The key.
-        place: Place,
+        place: Box<Place>,
         /// The other key, with its value where that matters.
         beside: &'static str,
         /// What to do.
@@ -185,13 +185,13 @@ pub enum SetupError {
     )]
     RelativeNeedsScale {
         /// The scale, or the unit where the scale is not written.
-        place: Place,
+        place: Box<Place>,
     },
     /// A setup that describes neither light nor gas.
     #[error("neither light nor gas: the background is dark and there is no cloud ({} line {})\nhint: add a [[cloud]], or give the [background] a light", place.path.display(), place.line)]
     NothingThere {
         /// The file.
-        place: Place,
+        place: Box<Place>,
     },
     /// The same species twice.
     #[error(
@@ -199,7 +199,7 @@ pub enum SetupError {
     )]
     DefinedTwice {
         /// The second definition.
-        place: Place,
+        place: Box<Place>,
         /// The name.
         name: String,
         /// The line of the first definition.
@@ -212,7 +212,7 @@ pub enum SetupError {
     )]
     UnknownSpecies {
         /// The column's key.
-        place: Place,
+        place: Box<Place>,
         /// The name as written.
         name: String,
         /// Known names that look like it.

@@ -15,12 +15,13 @@ pub struct Place {
 }
 
 impl Place {
-    pub(super) fn new(path: &Path, line: usize, key: impl Into<String>) -> Self {
-        Place {
+    pub(super) fn new(path: &Path, line: usize, key: impl Into<String>) -> Box<Self> {
+        // Boxed, so that an error stays small on the way up.
+        Box::new(Place {
             path: path.to_path_buf(),
             line,
             key: key.into(),
-        }
+        })
     }
 }
 

@@ -42,7 +42,7 @@ pub(super) struct Section<'a, 't> {
 
 /// A value and the key where it stands.
 pub(super) struct Entry<'a, 't> {
-    pub place: Place,
+    pub place: Box<Place>,
     pub value: &'a DeValue<'t>,
 }
 
@@ -63,7 +63,7 @@ impl<'a, 't> Section<'a, 't> {
     }
 
     /// The place of a key that may or may not be there.
-    pub fn place(&self, key: &str) -> Place {
+    pub fn place(&self, key: &str) -> Box<Place> {
         let line = self.table.get_key_value(key).map_or(self.line, |(key, _)| {
             line_of(self.source.text, key.span().start)
         });
