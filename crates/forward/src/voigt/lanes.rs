@@ -1,0 +1,286 @@
+//! The lane body: a block of points with one damping parameter, ready to be inlined into a larger vector kernel.
+
+use std::f64::consts::{FRAC_2_PI, PI};
+use std::marker::PhantomData;
+
+use super::accuracy::Accuracy;
+use super::arithmetic::Arithmetic;
+use super::elementary::{Angle, HALF_PI_HEAD, HALF_PI_TAIL, ROUNDER, exp};
+use super::quadrature::{Fraction, Node, Point};
+use super::scalar;
+
+/// `2/sqrt(pi)`.
+const TWO_OVER_SQRT_PI: f64 = std::f64::consts::FRAC_2_SQRT_PI;
+
+/// Beyond this `|z|²` the product of all denominators of a rule could overflow: the core rule, the first wing rules, the last one.
+const CORE_OVERFLOW_RADIUS_SQUARED: f64 = 1e10;
+const WING_OVERFLOW_RADIUS_SQUARED: f64 = 1e20;
+const FAR_OVERFLOW_RADIUS_SQUARED: f64 = 1e120;
+
+/// What depends on `y` alone, computed once for a line.
+#[derive(Clone, Copy, Debug)]
+pub struct Damping<A> {
+    y: f64,
+    y_squared: f64,
+    four_y_squared: f64,
+    /// `p = exp(-2 pi y / h)`, the size of the pole's image.
+    image: f64,
+    /// `(1 + p)²`.
+    one_plus_image_squared: f64,
+    /// `2 exp(y² - 2 pi y / h)`, or 0 where the residue of the pole does not count.
+    amplitude: f64,
+    accuracy: PhantomData<A>,
+}
+
+impl<A: Accuracy> Damping<A> {
+    /// For `y >= 0`, the Lorentzian half-width in units of the Gaussian 1/e half-width; a negative `y` gives NaN everywhere.
+    #[inline]
+    #[must_use]
+    pub fn new(y: f64) -> Self {
+        let y = if y < 0.0 { f64::NAN } else { y };
+        let decay = -2.0 * PI * y / A::STEP;
+        let image = decay.exp();
+        let amplitude = if y < A::POLE_TERM_BELOW_Y {
+            2.0 * (y * y + decay).exp()
+        } else {
+            0.0
+        };
+        Self {
+            y,
+            y_squared: y * y,
+            four_y_squared: 4.0 * y * y,
+            image,
+            one_plus_image_squared: (1.0 + image) * (1.0 + image),
+            amplitude,
+            accuracy: PhantomData,
+        }
+    }
+
+    /// The `y` it was made for.
+    #[inline(always)]
+    #[must_use]
+    pub fn y(&self) -> f64 {
+        self.y
+    }
+}
+
+/// `w(x + i y)` of `L` points with the same `y`.
+///
+/// ```text
+/// re + i im = exp(-z²) erfc(-i z)
+/// ```
+///
+/// `x`: distances from the line centre in Gaussian 1/e half-widths, any order, any size. `R` must be [`super::Fused`] exactly where the
+/// calling code is compiled with FMA instructions. Not finite `x` gives NaN or the limit 0.
+///
+/// Method: modified trapezoidal rule (Matta & Reichel 1971, Math. Comp. 25, 339; Hunter & Regan 1972, Math. Comp. 26, 539; Al Azah &
+/// Chandler-Wilde 2021, SIAM J. Numer. Anal. 59, 2346; citations from memory) within the core radius of `A`, Gauss-Hermite rules beyond
+/// (Gautschi 1970, SIAM J. Numer. Anal. 7, 187). The block takes the core rule if one of its points needs it: that rule holds in the wings
+/// as well.
+///
+/// Accuracy: that of `A`, component by component, for `y = 0` and `1e-8 <= y <= 1e3`, `|x| <= 1e4`: `every_path_meets_the_oracle_table`.
+#[inline(always)]
+pub fn w_lanes<A: Accuracy, R: Arithmetic, const L: usize>(
+    x: &[f64; L],
+    damping: &Damping<A>,
+    re: &mut [f64; L],
+    im: &mut [f64; L],
+) {
+    let mut nearest = f64::INFINITY;
+    let mut farthest = 0.0;
+    for &x in x {
+        let radius_squared = R::mul_add(x, x, damping.y_squared);
+        // Written so that NaN reaches `farthest` and ends in the scalar path.
+        nearest = if radius_squared < nearest {
+            radius_squared
+        } else {
+            nearest
+        };
+        farthest = if radius_squared <= farthest {
+            farthest
+        } else {
+            radius_squared
+        };
+    }
+    if nearest < A::CORE_RADIUS_SQUARED {
+        if farthest < CORE_OVERFLOW_RADIUS_SQUARED {
+            if damping.amplitude == 0.0 {
+                each(x, re, im, |x| core_without_pole::<A, R>(x, damping));
+            } else {
+                each(x, re, im, |x| core::<A, R>(x, damping));
+            }
+            return;
+        }
+    } else if farthest < WING_OVERFLOW_RADIUS_SQUARED {
+        wing::<A, R, L>(x, damping, nearest, re, im);
+        return;
+    } else if farthest < FAR_OVERFLOW_RADIUS_SQUARED
+        && nearest >= A::wing_rules()[0].from_radius_squared
+    {
+        each(x, re, im, |x| {
+            hermite::<A, R>(x, damping, A::wing_rules()[0].nodes)
+        });
+        return;
+    }
+    each(x, re, im, |x| scalar::w(x, damping.y));
+}
+
+/// `dw/dz` of `L` points, from `w` at the same points: `dw/dx = dw/dz`, `dw/dy = i dw/dz`.
+///
+/// ```text
+/// dw/dz = -2 z w + 2 i / sqrt(pi)
+/// ```
+///
+/// Accuracy: the sum cancels in the wings. With `w` at `Full`, the absolute error is below `1e-13 max(1, |z|) |w|`, and that of the real
+/// part also below `1e-12 max(1, |x|) Re w` for `y <= 1`: `slopes_keep_the_promised_accuracy`. The rounding is of no consequence in a
+/// Jacobian; it is in the ratio `w'/w` beyond `|x| = 1e6`.
+#[inline(always)]
+pub fn slope_lanes<R: Arithmetic, const L: usize>(
+    x: &[f64; L],
+    y: f64,
+    re: &[f64; L],
+    im: &[f64; L],
+    slope_re: &mut [f64; L],
+    slope_im: &mut [f64; L],
+) {
+    for lane in 0..L {
+        slope_re[lane] = -2.0 * R::mul_add(x[lane], re[lane], -(y * im[lane]));
+        slope_im[lane] = R::mul_add(
+            -2.0,
+            R::mul_add(x[lane], im[lane], y * re[lane]),
+            TWO_OVER_SQRT_PI,
+        );
+    }
+}
+
+#[inline(always)]
+fn each<const L: usize>(
+    x: &[f64; L],
+    re: &mut [f64; L],
+    im: &mut [f64; L],
+    value: impl Fn(f64) -> (f64, f64),
+) {
+    for lane in 0..L {
+        (re[lane], im[lane]) = value(x[lane]);
+    }
+}
+
+#[inline(always)]
+fn point<A>(x: f64, damping: &Damping<A>) -> (f64, Point) {
+    let x_squared = x * x;
+    let point = Point {
+        re_z_squared: x_squared - damping.y_squared,
+        im_z_squared_squared: x_squared * damping.four_y_squared,
+    };
+    (x_squared + damping.y_squared, point)
+}
+
+/// The trapezoidal rule and the residue of the pole.
+///
+/// Of the two rules, with nodes on the multiples of the step or half-way between them, the one whose nodes are farther from `x` is taken,
+/// so that the terms of the sum and the residue stay of the size of their sum. With `f = x/h - m/2`, `m = round(2 x / h)`, `p = exp(-2 pi y/h)`:
+///
+/// ```text
+/// C = 2 exp(-z²) / (1 + exp(-2 pi i f)/p) = 2 p exp(y² - x²) exp(-2 i x y) (p + exp(2 pi i f)) / |p + exp(2 pi i f)|²
+/// ```
+#[inline(always)]
+fn core<A: Accuracy, R: Arithmetic>(x: f64, damping: &Damping<A>) -> (f64, f64) {
+    let shifted = R::mul_add(x, 2.0 / A::STEP, ROUNDER);
+    let half_steps = shifted - ROUNDER;
+    let odd = shifted.to_bits() & 1 == 1;
+    let phase = Angle::twice::<A, R>(R::mul_add(-half_steps, 0.5 * A::STEP, x) * (PI / A::STEP));
+
+    let product = x * damping.y;
+    let turned = R::mul_add(product, FRAC_2_PI, ROUNDER);
+    let turns = turned - ROUNDER;
+    let rest = R::mul_add(
+        -turns,
+        HALF_PI_TAIL,
+        R::mul_add(-turns, HALF_PI_HEAD, product),
+    );
+    let rotation = Angle::twice::<A, R>(rest);
+
+    let gauss = damping.amplitude * exp::<A, R>(-(x * x));
+    // An odd number of half turns of the rotation changes the sign.
+    let gauss = f64::from_bits(gauss.to_bits() ^ (turned.to_bits() << 63));
+
+    // (p + cos + i sin)(cos - i sin), and the square of the first factor.
+    let sum = (1.0 + damping.image) - phase.one_minus_cos;
+    let cos = 1.0 - rotation.one_minus_cos;
+    let residue_re = gauss * R::mul_add(sum, cos, phase.sin * rotation.sin);
+    let residue_im = gauss * R::mul_add(phase.sin, cos, -(sum * rotation.sin));
+    let residue_divisor = R::mul_add(
+        -2.0 * damping.image,
+        phase.one_minus_cos,
+        damping.one_plus_image_squared,
+    );
+
+    let (radius_squared, point) = point(x, damping);
+    let (on, between) = (A::on(), A::between());
+    let node = |k: usize| Node {
+        t_squared: if odd {
+            on[k].t_squared
+        } else {
+            between[k].t_squared
+        },
+        weight: if odd { on[k].weight } else { between[k].weight },
+        weight_t_squared: if odd {
+            on[k].weight_t_squared
+        } else {
+            between[k].weight_t_squared
+        },
+    };
+    let total = Fraction::sum::<R>(point, node, on.len());
+    let inverse = 1.0 / (total.divisor * residue_divisor);
+    let rule_re = damping.y * R::mul_add(radius_squared, total.s0, total.s1);
+    let rule_im = x * R::mul_add(radius_squared, total.s0, -total.s1);
+    (
+        R::mul_add(rule_re, residue_divisor, residue_re * total.divisor) * inverse,
+        R::mul_add(rule_im, residue_divisor, residue_im * total.divisor) * inverse,
+    )
+}
+
+/// The trapezoidal rule where `y` is so large that the residue does not count, and either set of nodes will do.
+#[inline(always)]
+fn core_without_pole<A: Accuracy, R: Arithmetic>(x: f64, damping: &Damping<A>) -> (f64, f64) {
+    hermite::<A, R>(x, damping, A::between())
+}
+
+/// A rule of nodes alone.
+#[inline(always)]
+fn hermite<A: Accuracy, R: Arithmetic>(
+    x: f64,
+    damping: &Damping<A>,
+    nodes: &'static [Node],
+) -> (f64, f64) {
+    let (radius_squared, point) = point(x, damping);
+    let total = Fraction::sum::<R>(point, |k| nodes[k], nodes.len());
+    let inverse = 1.0 / total.divisor;
+    (
+        damping.y * R::mul_add(radius_squared, total.s0, total.s1) * inverse,
+        x * R::mul_add(radius_squared, total.s0, -total.s1) * inverse,
+    )
+}
+
+/// The shortest rule that serves the nearest point of the block.
+#[inline(always)]
+fn wing<A: Accuracy, R: Arithmetic, const L: usize>(
+    x: &[f64; L],
+    damping: &Damping<A>,
+    nearest: f64,
+    re: &mut [f64; L],
+    im: &mut [f64; L],
+) {
+    for (index, rule) in A::wing_rules().iter().enumerate() {
+        // The last rule begins where the core ends.
+        if nearest >= rule.from_radius_squared || index + 1 == A::wing_rules().len() {
+            each(x, re, im, |x| hermite::<A, R>(x, damping, rule.nodes));
+            break;
+        }
+    }
+    if damping.y < A::GAUSSIAN_IN_WING_BELOW_Y {
+        for lane in 0..L {
+            re[lane] += scalar::gaussian(x[lane]);
+        }
+    }
+}
