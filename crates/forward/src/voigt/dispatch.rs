@@ -2,8 +2,10 @@
 
 use std::sync::OnceLock;
 
+use pulp::{Simd, WithSimd};
+
 use super::accuracy::{Accuracy, Fast, Full};
-use super::arithmetic::{Arithmetic, Separate};
+use super::arithmetic::{Arithmetic, Fused, Separate};
 use super::lanes::{Damping, w_lanes};
 
 /// Points of a block: two vectors of AVX2, one of AVX-512.
@@ -85,6 +87,8 @@ pub fn w_slice_with(
     im: &mut [f64],
     precision: Precision,
 ) {
+    let length = x.len().min(re.len()).min(im.len());
+    let (x, re, im) = (&x[..length], &mut re[..length], &mut im[..length]);
     match precision {
         Precision::Full => run(set, x, &Damping::<Full>::new(y), re, im),
         Precision::Fast => run(set, x, &Damping::<Fast>::new(y), re, im),
@@ -98,54 +102,61 @@ fn run<A: Accuracy>(
     re: &mut [f64],
     im: &mut [f64],
 ) {
+    let blocks = Blocks { x, damping, re, im };
     #[cfg(target_arch = "x86_64")]
-    {
-        use super::arithmetic::Fused;
-        match set {
-            InstructionSet::Avx512 => {
-                if let Some(simd) = pulp::x86::V4::try_new() {
-                    return simd.vectorize(
-                        #[inline(always)]
-                        || blocks::<A, Fused>(x, damping, re, im),
-                    );
-                }
+    match set {
+        InstructionSet::Avx512 => {
+            if let Some(simd) = pulp::x86::V4::try_new() {
+                return Simd::vectorize(simd, blocks);
             }
-            InstructionSet::Avx2 => {
-                if let Some(simd) = pulp::x86::V3::try_new() {
-                    return simd.vectorize(
-                        #[inline(always)]
-                        || blocks::<A, Fused>(x, damping, re, im),
-                    );
-                }
-            }
-            InstructionSet::Portable => {}
         }
+        InstructionSet::Avx2 => {
+            if let Some(simd) = pulp::x86::V3::try_new() {
+                return Simd::vectorize(simd, blocks);
+            }
+        }
+        InstructionSet::Portable => {}
     }
     #[cfg(not(target_arch = "x86_64"))]
     let _ = set;
-    blocks::<A, Separate>(x, damping, re, im);
+    blocks.evaluate::<Separate>();
 }
 
-/// Whole blocks, then the tail in a padded one.
-#[inline(always)]
-fn blocks<A: Accuracy, R: Arithmetic>(
-    x: &[f64],
-    damping: &Damping<A>,
-    re: &mut [f64],
-    im: &mut [f64],
-) {
-    let (x_blocks, x_tail) = x.as_chunks::<LANES>();
-    let (re_blocks, re_tail) = re[..x.len()].as_chunks_mut::<LANES>();
-    let (im_blocks, im_tail) = im[..x.len()].as_chunks_mut::<LANES>();
-    for ((x, re), im) in x_blocks.iter().zip(re_blocks).zip(im_blocks) {
-        w_lanes::<A, R, LANES>(x, damping, re, im);
+/// The slices of a call.
+struct Blocks<'a, A> {
+    x: &'a [f64],
+    damping: &'a Damping<A>,
+    re: &'a mut [f64],
+    im: &'a mut [f64],
+}
+
+impl<A: Accuracy> WithSimd for Blocks<'_, A> {
+    type Output = ();
+
+    /// Inlined by `pulp` into a function that is compiled for the instruction set; all of those used here have FMA.
+    #[inline(always)]
+    fn with_simd<S: Simd>(self, _: S) {
+        self.evaluate::<Fused>();
     }
-    if let Some(&last) = x_tail.last() {
-        let mut padded = [last; LANES];
-        padded[..x_tail.len()].copy_from_slice(x_tail);
-        let (mut padded_re, mut padded_im) = ([0.0; LANES], [0.0; LANES]);
-        w_lanes::<A, R, LANES>(&padded, damping, &mut padded_re, &mut padded_im);
-        re_tail.copy_from_slice(&padded_re[..x_tail.len()]);
-        im_tail.copy_from_slice(&padded_im[..x_tail.len()]);
+}
+
+impl<A: Accuracy> Blocks<'_, A> {
+    /// Whole blocks, then the tail in a padded one.
+    #[inline(always)]
+    fn evaluate<R: Arithmetic>(self) {
+        let (x_blocks, x_tail) = self.x.as_chunks::<LANES>();
+        let (re_blocks, re_tail) = self.re.as_chunks_mut::<LANES>();
+        let (im_blocks, im_tail) = self.im.as_chunks_mut::<LANES>();
+        for ((x, re), im) in x_blocks.iter().zip(re_blocks).zip(im_blocks) {
+            w_lanes::<A, R, LANES>(x, self.damping, re, im);
+        }
+        if let Some(&last) = x_tail.last() {
+            let mut padded = [last; LANES];
+            padded[..x_tail.len()].copy_from_slice(x_tail);
+            let (mut re, mut im) = ([0.0; LANES], [0.0; LANES]);
+            w_lanes::<A, R, LANES>(&padded, self.damping, &mut re, &mut im);
+            re_tail.copy_from_slice(&re[..x_tail.len()]);
+            im_tail.copy_from_slice(&im[..x_tail.len()]);
+        }
     }
 }

@@ -6,7 +6,7 @@ use std::marker::PhantomData;
 use super::accuracy::Accuracy;
 use super::arithmetic::Arithmetic;
 use super::elementary::{Angle, HALF_PI_HEAD, HALF_PI_TAIL, ROUNDER, exp};
-use super::quadrature::{Fraction, Node, Point};
+use super::quadrature::{Fraction, Node, Nodes, Point};
 use super::scalar;
 
 /// `2/sqrt(pi)`.
@@ -102,27 +102,25 @@ pub fn w_lanes<A: Accuracy, R: Arithmetic, const L: usize>(
             radius_squared
         };
     }
-    if nearest < A::CORE_RADIUS_SQUARED {
-        if farthest < CORE_OVERFLOW_RADIUS_SQUARED {
-            if damping.amplitude == 0.0 {
-                each(x, re, im, |x| core_without_pole::<A, R>(x, damping));
-            } else {
-                each(x, re, im, |x| core::<A, R>(x, damping));
+    if nearest < A::CORE_RADIUS_SQUARED && farthest < CORE_OVERFLOW_RADIUS_SQUARED {
+        if damping.amplitude == 0.0 {
+            rule::<A, R, L>(x, damping, A::between(), re, im);
+        } else {
+            for lane in 0..L {
+                (re[lane], im[lane]) = core::<A, R>(x[lane], damping);
             }
-            return;
         }
-    } else if farthest < WING_OVERFLOW_RADIUS_SQUARED {
+    } else if nearest >= A::CORE_RADIUS_SQUARED && farthest < WING_OVERFLOW_RADIUS_SQUARED {
         wing::<A, R, L>(x, damping, nearest, re, im);
-        return;
-    } else if farthest < FAR_OVERFLOW_RADIUS_SQUARED
-        && nearest >= A::wing_rules()[0].from_radius_squared
+    } else if nearest >= A::wing_rules()[0].from_radius_squared
+        && farthest < FAR_OVERFLOW_RADIUS_SQUARED
     {
-        each(x, re, im, |x| {
-            hermite::<A, R>(x, damping, A::wing_rules()[0].nodes)
-        });
-        return;
+        rule::<A, R, L>(x, damping, A::wing_rules()[0].nodes, re, im);
+    } else {
+        for lane in 0..L {
+            (re[lane], im[lane]) = scalar::w(x[lane], damping.y);
+        }
     }
-    each(x, re, im, |x| scalar::w(x, damping.y));
 }
 
 /// `dw/dz` of `L` points, from `w` at the same points: `dw/dx = dw/dz`, `dw/dy = i dw/dz`.
@@ -150,18 +148,6 @@ pub fn slope_lanes<R: Arithmetic, const L: usize>(
             R::mul_add(x[lane], im[lane], y * re[lane]),
             TWO_OVER_SQRT_PI,
         );
-    }
-}
-
-#[inline(always)]
-fn each<const L: usize>(
-    x: &[f64; L],
-    re: &mut [f64; L],
-    im: &mut [f64; L],
-    value: impl Fn(f64) -> (f64, f64),
-) {
-    for lane in 0..L {
-        (re[lane], im[lane]) = value(x[lane]);
     }
 }
 
@@ -216,21 +202,12 @@ fn core<A: Accuracy, R: Arithmetic>(x: f64, damping: &Damping<A>) -> (f64, f64) 
     );
 
     let (radius_squared, point) = point(x, damping);
-    let (on, between) = (A::on(), A::between());
-    let node = |k: usize| Node {
-        t_squared: if odd {
-            on[k].t_squared
-        } else {
-            between[k].t_squared
-        },
-        weight: if odd { on[k].weight } else { between[k].weight },
-        weight_t_squared: if odd {
-            on[k].weight_t_squared
-        } else {
-            between[k].weight_t_squared
-        },
+    let nodes = EitherRule {
+        odd,
+        on: A::on(),
+        between: A::between(),
     };
-    let total = Fraction::sum::<R>(point, node, on.len());
+    let total = Fraction::sum::<R>(point, nodes, nodes.on.len());
     let inverse = 1.0 / (total.divisor * residue_divisor);
     let rule_re = damping.y * R::mul_add(radius_squared, total.s0, total.s1);
     let rule_im = x * R::mul_add(radius_squared, total.s0, -total.s1);
@@ -240,26 +217,50 @@ fn core<A: Accuracy, R: Arithmetic>(x: f64, damping: &Damping<A>) -> (f64, f64) 
     )
 }
 
-/// The trapezoidal rule where `y` is so large that the residue does not count, and either set of nodes will do.
-#[inline(always)]
-fn core_without_pole<A: Accuracy, R: Arithmetic>(x: f64, damping: &Damping<A>) -> (f64, f64) {
-    hermite::<A, R>(x, damping, A::between())
+/// The two rules of the core, and which of them a point takes.
+#[derive(Clone, Copy)]
+struct EitherRule {
+    odd: bool,
+    on: &'static [Node],
+    between: &'static [Node],
 }
 
-/// A rule of nodes alone.
+impl Nodes for EitherRule {
+    #[inline(always)]
+    fn at(self, k: usize) -> Node {
+        let (on, between) = (self.on[k], self.between[k]);
+        Node {
+            t_squared: if self.odd {
+                on.t_squared
+            } else {
+                between.t_squared
+            },
+            weight: if self.odd { on.weight } else { between.weight },
+            weight_t_squared: if self.odd {
+                on.weight_t_squared
+            } else {
+                between.weight_t_squared
+            },
+        }
+    }
+}
+
+/// A rule of nodes alone: the wings, and the core where `y` is so large that the residue does not count and any set of nodes will do.
 #[inline(always)]
-fn hermite<A: Accuracy, R: Arithmetic>(
-    x: f64,
+fn rule<A, R: Arithmetic, const L: usize>(
+    x: &[f64; L],
     damping: &Damping<A>,
     nodes: &'static [Node],
-) -> (f64, f64) {
-    let (radius_squared, point) = point(x, damping);
-    let total = Fraction::sum::<R>(point, |k| nodes[k], nodes.len());
-    let inverse = 1.0 / total.divisor;
-    (
-        damping.y * R::mul_add(radius_squared, total.s0, total.s1) * inverse,
-        x * R::mul_add(radius_squared, total.s0, -total.s1) * inverse,
-    )
+    re: &mut [f64; L],
+    im: &mut [f64; L],
+) {
+    for lane in 0..L {
+        let (radius_squared, point) = point(x[lane], damping);
+        let total = Fraction::sum::<R>(point, nodes, nodes.len());
+        let inverse = 1.0 / total.divisor;
+        re[lane] = damping.y * R::mul_add(radius_squared, total.s0, total.s1) * inverse;
+        im[lane] = x[lane] * R::mul_add(radius_squared, total.s0, -total.s1) * inverse;
+    }
 }
 
 /// The shortest rule that serves the nearest point of the block.
@@ -271,10 +272,10 @@ fn wing<A: Accuracy, R: Arithmetic, const L: usize>(
     re: &mut [f64; L],
     im: &mut [f64; L],
 ) {
-    for (index, rule) in A::wing_rules().iter().enumerate() {
+    for (index, wing) in A::wing_rules().iter().enumerate() {
         // The last rule begins where the core ends.
-        if nearest >= rule.from_radius_squared || index + 1 == A::wing_rules().len() {
-            each(x, re, im, |x| hermite::<A, R>(x, damping, rule.nodes));
+        if nearest >= wing.from_radius_squared || index + 1 == A::wing_rules().len() {
+            rule::<A, R, L>(x, damping, wing.nodes, re, im);
             break;
         }
     }

@@ -22,6 +22,18 @@ pub struct Node {
     pub(super) weight_t_squared: f64,
 }
 
+/// A rule as a point sees it.
+pub(super) trait Nodes: Copy {
+    fn at(self, k: usize) -> Node;
+}
+
+impl Nodes for &[Node] {
+    #[inline(always)]
+    fn at(self, k: usize) -> Node {
+        self[k]
+    }
+}
+
 /// What the sums need to know of a point.
 #[derive(Clone, Copy)]
 pub(super) struct Point {
@@ -59,39 +71,29 @@ impl Fraction {
         }
     }
 
-    /// The sum over the nodes `node(from)..node(from + count)`, joined as a balanced tree.
     #[inline(always)]
-    fn group<R: Arithmetic>(
-        point: Point,
-        node: impl Fn(usize) -> Node,
-        from: usize,
-        count: usize,
-    ) -> Self {
-        let at = |k: usize| Self::of::<R>(point, node(from + k));
-        let pair = |k: usize| at(k).join::<R>(at(k + 1));
-        match count {
-            1 => at(0),
-            2 => pair(0),
-            3 => pair(0).join::<R>(at(2)),
-            4 => pair(0).join::<R>(pair(2)),
-            6 => pair(0).join::<R>(pair(2)).join::<R>(pair(4)),
-            _ => unreachable!("rules have 1, 2, 3, 4, 6 or 12 pairs of nodes"),
-        }
+    fn pair<R: Arithmetic>(point: Point, nodes: impl Nodes, first: usize) -> Self {
+        Self::of::<R>(point, nodes.at(first)).join::<R>(Self::of::<R>(point, nodes.at(first + 1)))
+    }
+
+    #[inline(always)]
+    fn four<R: Arithmetic>(point: Point, nodes: impl Nodes, first: usize) -> Self {
+        Self::pair::<R>(point, nodes, first).join::<R>(Self::pair::<R>(point, nodes, first + 2))
     }
 
     /// The sum over all `count` nodes of a rule.
     #[inline(always)]
-    pub fn sum<R: Arithmetic>(
-        point: Point,
-        node: impl Fn(usize) -> Node + Copy,
-        count: usize,
-    ) -> Self {
-        if count <= 6 {
-            return Self::group::<R>(point, node, 0, count);
+    pub fn sum<R: Arithmetic>(point: Point, nodes: impl Nodes, count: usize) -> Self {
+        match count {
+            1 => Self::of::<R>(point, nodes.at(0)),
+            2 => Self::pair::<R>(point, nodes, 0),
+            3 => Self::pair::<R>(point, nodes, 0).join::<R>(Self::of::<R>(point, nodes.at(2))),
+            4 => Self::four::<R>(point, nodes, 0),
+            6 => Self::four::<R>(point, nodes, 0).join::<R>(Self::pair::<R>(point, nodes, 4)),
+            12 => Self::four::<R>(point, nodes, 0)
+                .join::<R>(Self::four::<R>(point, nodes, 4))
+                .join::<R>(Self::four::<R>(point, nodes, 8)),
+            _ => unreachable!("rules have 1, 2, 3, 4, 6 or 12 pairs of nodes"),
         }
-        let low = Self::group::<R>(point, node, 0, 4);
-        let middle = Self::group::<R>(point, node, 4, 4);
-        let high = Self::group::<R>(point, node, 8, 4);
-        low.join::<R>(middle).join::<R>(high)
     }
 }
