@@ -16,6 +16,8 @@ pub trait Accuracy: Copy + Send + Sync + 'static {
     const GAUSSIAN_IN_WING_BELOW_Y: f64;
     /// `|z|²` from which the Gauss-Hermite rules hold: the edge of the core.
     const CORE_RADIUS_SQUARED: f64;
+    /// `|z|²` from which the Gauss-Hermite rules with 1, 2, 3 and 4 pairs of nodes hold; where none does, that with 6 is taken.
+    const WING_RADII_SQUARED: [f64; 4];
     /// Coefficients of `exp(r)`, `|r| <= ln(2)/2`.
     const EXP: &'static [f64];
     /// Coefficients of `sin(r)/r` in `r²`, `|r| <= pi/4`.
@@ -27,16 +29,6 @@ pub trait Accuracy: Copy + Send + Sync + 'static {
     fn on() -> &'static [Node];
     #[doc(hidden)]
     fn between() -> &'static [Node];
-    #[doc(hidden)]
-    fn wing_rules() -> &'static [WingRule];
-}
-
-/// A Gauss-Hermite rule and the `|z|²` from which it holds.
-#[doc(hidden)]
-#[derive(Clone, Copy, Debug)]
-pub struct WingRule {
-    pub(super) from_radius_squared: f64,
-    pub(super) nodes: &'static [Node],
 }
 
 /// Each of real and imaginary part within `1e-13` of its own size.
@@ -47,51 +39,12 @@ pub struct Full;
 #[derive(Clone, Copy, Debug)]
 pub struct Fast;
 
-/// The rules of [`Full`], the farthest first.
-const FULL_WINGS: [WingRule; 5] = [
-    WingRule {
-        from_radius_squared: 4000.0 * 4000.0,
-        nodes: &rules::HERMITE_2,
-    },
-    WingRule {
-        from_radius_squared: 80.0 * 80.0,
-        nodes: &rules::HERMITE_4,
-    },
-    WingRule {
-        from_radius_squared: 22.5 * 22.5,
-        nodes: &rules::HERMITE_6,
-    },
-    WingRule {
-        from_radius_squared: 12.5 * 12.5,
-        nodes: &rules::HERMITE_8,
-    },
-    WingRule {
-        from_radius_squared: Full::CORE_RADIUS_SQUARED,
-        nodes: &rules::HERMITE_12,
-    },
-];
-
-/// The rules of [`Fast`], the farthest first.
-const FAST_WINGS: [WingRule; 3] = [
-    WingRule {
-        from_radius_squared: 60.0 * 60.0,
-        nodes: &rules::HERMITE_2,
-    },
-    WingRule {
-        from_radius_squared: 9.7 * 9.7,
-        nodes: &rules::HERMITE_4,
-    },
-    WingRule {
-        from_radius_squared: Fast::CORE_RADIUS_SQUARED,
-        nodes: &rules::HERMITE_6,
-    },
-];
-
 impl Accuracy for Full {
     const STEP: f64 = 33.0 / 64.0;
     const POLE_TERM_BELOW_Y: f64 = 5.9;
     const GAUSSIAN_IN_WING_BELOW_Y: f64 = 1e-9;
     const CORE_RADIUS_SQUARED: f64 = 7.65 * 7.65;
+    const WING_RADII_SQUARED: [f64; 4] = [4000.0 * 4000.0, 80.0 * 80.0, 22.5 * 22.5, 12.5 * 12.5];
     const EXP: &'static [f64] = &rules::EXP_FULL;
     const SIN: &'static [f64] = &rules::SIN_FULL;
     const COS: &'static [f64] = &rules::COS_FULL;
@@ -104,10 +57,6 @@ impl Accuracy for Full {
     fn between() -> &'static [Node] {
         &rules::TRAPEZOID_FULL_BETWEEN
     }
-    #[inline(always)]
-    fn wing_rules() -> &'static [WingRule] {
-        &FULL_WINGS
-    }
 }
 
 impl Accuracy for Fast {
@@ -115,6 +64,12 @@ impl Accuracy for Fast {
     const POLE_TERM_BELOW_Y: f64 = 4.0;
     const GAUSSIAN_IN_WING_BELOW_Y: f64 = 1e-8;
     const CORE_RADIUS_SQUARED: f64 = 6.25 * 6.25;
+    const WING_RADII_SQUARED: [f64; 4] = [
+        60.0 * 60.0,
+        9.7 * 9.7,
+        Self::CORE_RADIUS_SQUARED,
+        Self::CORE_RADIUS_SQUARED,
+    ];
     const EXP: &'static [f64] = &rules::EXP_FAST;
     const SIN: &'static [f64] = &rules::SIN_FAST;
     const COS: &'static [f64] = &rules::COS_FAST;
@@ -126,9 +81,5 @@ impl Accuracy for Fast {
     #[inline(always)]
     fn between() -> &'static [Node] {
         &rules::TRAPEZOID_FAST_BETWEEN
-    }
-    #[inline(always)]
-    fn wing_rules() -> &'static [WingRule] {
-        &FAST_WINGS
     }
 }

@@ -7,7 +7,7 @@ use super::accuracy::Accuracy;
 use super::arithmetic::Arithmetic;
 use super::elementary::{Angle, HALF_PI_HEAD, HALF_PI_TAIL, ROUNDER, exp};
 use super::quadrature::{Fraction, Node, Nodes, Point};
-use super::scalar;
+use super::{rules, scalar};
 
 /// `2/sqrt(pi)`.
 const TWO_OVER_SQRT_PI: f64 = std::f64::consts::FRAC_2_SQRT_PI;
@@ -86,23 +86,12 @@ pub fn w_lanes<A: Accuracy, R: Arithmetic, const L: usize>(
     re: &mut [f64; L],
     im: &mut [f64; L],
 ) {
-    let mut nearest = f64::INFINITY;
-    let mut farthest = 0.0;
-    for &x in x {
-        let radius_squared = R::mul_add(x, x, damping.y_squared);
-        // Written so that NaN reaches `farthest` and ends in the scalar path.
-        nearest = if radius_squared < nearest {
-            radius_squared
-        } else {
-            nearest
-        };
-        farthest = if radius_squared <= farthest {
-            farthest
-        } else {
-            radius_squared
-        };
+    let mut radius_squared = [0.0; L];
+    for lane in 0..L {
+        radius_squared[lane] = R::mul_add(x[lane], x[lane], damping.y_squared);
     }
-    if nearest < A::CORE_RADIUS_SQUARED && farthest < CORE_OVERFLOW_RADIUS_SQUARED {
+    let outside_core = all_at_least(&radius_squared, A::CORE_RADIUS_SQUARED);
+    if !outside_core && all_below(&radius_squared, CORE_OVERFLOW_RADIUS_SQUARED) {
         if damping.amplitude == 0.0 {
             rule::<A, R, L>(x, damping, A::between(), re, im);
         } else {
@@ -110,12 +99,12 @@ pub fn w_lanes<A: Accuracy, R: Arithmetic, const L: usize>(
                 (re[lane], im[lane]) = core::<A, R>(x[lane], damping);
             }
         }
-    } else if nearest >= A::CORE_RADIUS_SQUARED && farthest < WING_OVERFLOW_RADIUS_SQUARED {
-        wing::<A, R, L>(x, damping, nearest, re, im);
-    } else if nearest >= A::wing_rules()[0].from_radius_squared
-        && farthest < FAR_OVERFLOW_RADIUS_SQUARED
+    } else if outside_core && all_below(&radius_squared, WING_OVERFLOW_RADIUS_SQUARED) {
+        wing::<A, R, L>(x, damping, &radius_squared, re, im);
+    } else if all_at_least(&radius_squared, A::WING_RADII_SQUARED[0])
+        && all_below(&radius_squared, FAR_OVERFLOW_RADIUS_SQUARED)
     {
-        rule::<A, R, L>(x, damping, A::wing_rules()[0].nodes, re, im);
+        rule::<A, R, L>(x, damping, &rules::HERMITE_2, re, im);
     } else {
         for lane in 0..L {
             (re[lane], im[lane]) = scalar::w(x[lane], damping.y);
@@ -149,6 +138,26 @@ pub fn slope_lanes<R: Arithmetic, const L: usize>(
             TWO_OVER_SQRT_PI,
         );
     }
+}
+
+/// False if a value is NaN.
+#[inline(always)]
+fn all_at_least<const L: usize>(values: &[f64; L], bound: f64) -> bool {
+    let mut all = true;
+    for &value in values {
+        all &= value >= bound;
+    }
+    all
+}
+
+/// False if a value is NaN.
+#[inline(always)]
+fn all_below<const L: usize>(values: &[f64; L], bound: f64) -> bool {
+    let mut all = true;
+    for &value in values {
+        all &= value < bound;
+    }
+    all
 }
 
 #[inline(always)]
@@ -268,16 +277,22 @@ fn rule<A, R: Arithmetic, const L: usize>(
 fn wing<A: Accuracy, R: Arithmetic, const L: usize>(
     x: &[f64; L],
     damping: &Damping<A>,
-    nearest: f64,
+    radius_squared: &[f64; L],
     re: &mut [f64; L],
     im: &mut [f64; L],
 ) {
-    for (index, wing) in A::wing_rules().iter().enumerate() {
-        // The last rule begins where the core ends.
-        if nearest >= wing.from_radius_squared || index + 1 == A::wing_rules().len() {
-            rule::<A, R, L>(x, damping, wing.nodes, re, im);
-            break;
-        }
+    let [one, two, three, four] = A::WING_RADII_SQUARED;
+    // Every rule has its own copy of the code, with its nodes as constants in it.
+    if all_at_least(radius_squared, one) {
+        rule::<A, R, L>(x, damping, &rules::HERMITE_2, re, im);
+    } else if all_at_least(radius_squared, two) {
+        rule::<A, R, L>(x, damping, &rules::HERMITE_4, re, im);
+    } else if all_at_least(radius_squared, three) {
+        rule::<A, R, L>(x, damping, &rules::HERMITE_6, re, im);
+    } else if all_at_least(radius_squared, four) {
+        rule::<A, R, L>(x, damping, &rules::HERMITE_8, re, im);
+    } else {
+        rule::<A, R, L>(x, damping, &rules::HERMITE_12, re, im);
     }
     if damping.y < A::GAUSSIAN_IN_WING_BELOW_Y {
         for lane in 0..L {
