@@ -338,7 +338,7 @@ def read_scene(path, wavelength_nm, shape=()):
         background_temperature=value(light["temperature_K"]) if light.get("light", "blackbody") == "blackbody" else 0.0,
         dilution=value(light.get("dilution", 1.0)),
         shape=list(shape),
-        shape_range=(centres[0], centres[-1]),
+        shape_range=(edges[0], edges[-1]),
         clouds=clouds,
         fwhm=instrument.get("fwhm_nm", 0.0) * 1e-9,
         resolving_power=instrument.get("resolving_power", 0.0),
