@@ -85,6 +85,11 @@ impl Spectrum {
         }
     }
 
+    /// The text of the CSV that [`Spectrum::write_csv`] writes.
+    pub fn to_csv(&self) -> String {
+        csv::format(self)
+    }
+
     /// Writes CSV; every number is read back bit for bit (`a_spectrum_survives_csv_bit_for_bit`).
     ///
     /// # Errors

@@ -2,6 +2,7 @@
 
 use std::path::PathBuf;
 
+use backlit_species::SpeciesError;
 use backlit_units::UnitsError;
 
 use super::Place;
@@ -217,6 +218,36 @@ pub enum SetupError {
         name: String,
         /// Known names that look like it.
         nearest: Vec<String>,
+    },
+    /// One species under two names in one cloud.
+    #[error(
+        "species \"{name}\" has two columns in one cloud, the first on line {first_line} ({place})\nhint: give each species one column; a second [[cloud]] may have its own"
+    )]
+    SpeciesTwice {
+        /// The second column's key.
+        place: Box<Place>,
+        /// The name in the catalogue.
+        name: String,
+        /// The line of the first column.
+        first_line: usize,
+    },
+    /// A name that the catalogue refuses.
+    #[error("{place}: {source}")]
+    SpeciesName {
+        /// The column's key.
+        place: Box<Place>,
+        /// What the catalogue said.
+        source: Box<SpeciesError>,
+    },
+    /// The tables of a user's species cannot be used.
+    #[error("species \"{name}\" ({place}): {source}")]
+    UserTables {
+        /// The species' section.
+        place: Box<Place>,
+        /// The name.
+        name: String,
+        /// What the reader of tables said.
+        source: Box<SpeciesError>,
     },
 }
 

@@ -15,6 +15,7 @@ mod error;
 mod model;
 mod place;
 mod read;
+mod resolve;
 mod section;
 
 pub use error::SetupError;

@@ -404,28 +404,26 @@ fn shortened(text: &str) -> String {
 
 /// The candidate that looks most like `name`, if any looks like it enough to be meant.
 pub(super) fn nearest(name: &str, candidates: &[&str]) -> Option<String> {
-    let folded = name.to_lowercase();
+    const SIMILAR: f64 = 0.6;
     candidates
         .iter()
-        .map(|candidate| {
-            let similarity =
-                strsim::normalized_damerau_levenshtein(&folded, &candidate.to_lowercase());
-            // A missing or added unit (`fwhm` for `fwhm_nm`) is a common slip that counts as close.
-            let prefix = folded.len() >= 3
-                && (candidate.to_lowercase().starts_with(&folded)
-                    || folded.starts_with(&candidate.to_lowercase()));
-            (
-                if prefix {
-                    similarity.max(0.9)
-                } else {
-                    similarity
-                },
-                candidate,
-            )
-        })
-        .filter(|(similarity, _)| *similarity >= 0.6)
+        .map(|candidate| (similarity(name, candidate), candidate))
+        .filter(|(similarity, _)| *similarity >= SIMILAR)
         .max_by(|a, b| a.0.total_cmp(&b.0))
         .map(|(_, candidate)| (*candidate).to_owned())
+}
+
+/// How much two names look alike, from 0 to 1; case does not count.
+pub(super) fn similarity(name: &str, candidate: &str) -> f64 {
+    let (name, candidate) = (name.to_lowercase(), candidate.to_lowercase());
+    let similarity = strsim::normalized_damerau_levenshtein(&name, &candidate);
+    // A missing or added unit (`fwhm` for `fwhm_nm`) is a common slip that counts as close.
+    let shorter = name.len().min(candidate.len());
+    if shorter >= 3 && (candidate.starts_with(&name) || name.starts_with(&candidate)) {
+        similarity.max(0.9)
+    } else {
+        similarity
+    }
 }
 
 #[cfg(test)]

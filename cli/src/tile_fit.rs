@@ -1,0 +1,139 @@
+//! The pixels of one tile, one after the other.
+
+use backlit_cubes::{Quantity as MapQuantity, Tile, TileData};
+use backlit_inverse::{Fit, Observation, Problem, Quantity, Workspace};
+use ndarray::{Array2, ArrayView1};
+
+use crate::fit::is_column;
+use crate::observed::Frame;
+
+/// The answers of one tile, as the maps store wants them.
+pub struct TileMaps {
+    /// (quantity, pixel), in the order of [`map_quantities`].
+    pub values: Array2<f64>,
+    /// One word a pixel.
+    pub flags: Vec<u32>,
+    /// Pixels with at least one value.
+    pub fitted: u64,
+}
+
+/// The maps that belong to the free quantities: each with its sigma, columns with an upper limit, then the quality.
+pub fn map_quantities(quantities: &[Quantity]) -> Vec<MapQuantity> {
+    let mut maps = Vec::new();
+    for quantity in quantities {
+        let (name, units, words) = (&quantity.name, &quantity.units, &quantity.long_name);
+        // The unit of an interval on a logarithmic scale.
+        let sigma_units = if is_column(quantity) {
+            "dex"
+        } else {
+            units.as_str()
+        };
+        maps.push(MapQuantity::new(
+            name.as_str(),
+            units.as_str(),
+            words.as_str(),
+        ));
+        maps.push(MapQuantity::new(
+            format!("{name}_sigma"),
+            sigma_units,
+            format!("{words}, 1 sigma"),
+        ));
+        if is_column(quantity) {
+            maps.push(MapQuantity::new(
+                format!("{name}_upper"),
+                units.as_str(),
+                format!("{words}, 3-sigma upper limit"),
+            ));
+        }
+    }
+    maps.push(MapQuantity::new("chi2_reduced", "1", "reduced chi-square"));
+    maps.push(MapQuantity::new("iterations", "1", "iterations of the fit"));
+    maps
+}
+
+/// Fits every pixel; each starts from the last good answer of the tile.
+///
+/// Pixels run in a serpentine, so that the pixel before is always a neighbour. Nothing from outside the tile enters.
+pub fn fit(
+    problem: &Problem,
+    workspace: &mut Workspace,
+    frame: &Frame,
+    tile: &Tile,
+    data: TileData,
+) -> TileMaps {
+    let quantities = problem.quantities();
+    let maps = map_quantities(quantities);
+    let mut values = Array2::from_elem((maps.len(), tile.pixels()), f64::NAN);
+    let mut flags = vec![0; tile.pixels()];
+    let mut fitted = 0;
+    let mut near: Option<Fit> = None;
+    for pixel in serpentine(tile) {
+        let row = |values: ArrayView1<'_, f64>| frame.rising(&values.to_vec());
+        let intensity = row(data.intensity.row(pixel));
+        let uncertainty = data.uncertainty.row(pixel).map(row);
+        let mask = frame.rising(&data.mask.row(pixel).to_vec());
+        let observation = Observation {
+            intensity: &intensity,
+            uncertainty: uncertainty.as_deref(),
+            mask: &mask,
+        };
+        let answer = problem.fit(workspace, &observation, near.as_ref());
+        record(quantities, &answer, &mut values, pixel);
+        flags[pixel] = answer.flags.0;
+        fitted += u64::from(answer.values.iter().any(|value| value.is_finite()));
+        if answer.flags.0 == 0 {
+            near = Some(answer);
+        }
+    }
+    TileMaps {
+        values,
+        flags,
+        fitted,
+    }
+}
+
+fn record(quantities: &[Quantity], answer: &Fit, values: &mut Array2<f64>, pixel: usize) {
+    let mut map = 0;
+    let mut put = |value: f64| {
+        values[(map, pixel)] = value;
+        map += 1;
+    };
+    for (i, quantity) in quantities.iter().enumerate() {
+        put(answer.values[i]);
+        put(answer.sigma[i]);
+        if is_column(quantity) {
+            put(answer.upper[i]);
+        }
+    }
+    put(answer.chi2_reduced);
+    put(f64::from(answer.iterations));
+}
+
+/// The pixels of a tile row by row, every second row backwards.
+fn serpentine(tile: &Tile) -> impl Iterator<Item = usize> {
+    let (height, width) = (tile.height(), tile.width());
+    (0..height).flat_map(move |row| {
+        (0..width).map(move |step| {
+            let column = if row % 2 == 0 { step } else { width - 1 - step };
+            row * width + column
+        })
+    })
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn the_pixel_before_is_always_a_neighbour() {
+        let tile = Tile {
+            index: 0,
+            y0: 2,
+            y1: 5,
+            x0: 1,
+            x1: 5,
+        };
+        let order: Vec<usize> = serpentine(&tile).collect();
+        assert_eq!(order, [0, 1, 2, 3, 7, 6, 5, 4, 8, 9, 10, 11]);
+    }
+}
