@@ -35,14 +35,15 @@ def chebyshev_polynomial(function, low, high, terms):
     return list(mp.lu_solve(rows, mp.matrix([function(x) for x in nodes])))
 
 
-def sine_series(z):
-    """sin(sqrt z) / sqrt z"""
-    return mp.sin(mp.sqrt(z)) / mp.sqrt(z) if z > 0 else mp.mpf(1)
+def half_turn_sine(z):
+    """sin(pi r / 2) / r for r = sqrt z"""
+    r = mp.sqrt(z)
+    return mp.sin(mp.pi * r / 2) / r if z > 0 else mp.pi / 2
 
 
-def cosine_rest(z):
-    """(1 - cos(sqrt z)) / z"""
-    return (1 - mp.cos(mp.sqrt(z))) / z if z > 0 else mp.mpf(1) / 2
+def half_turn_cosine(z):
+    """(1 - cos(pi r / 2)) / r^2 for r = sqrt z"""
+    return (1 - mp.cos(mp.pi * mp.sqrt(z) / 2)) / z if z > 0 else mp.pi**2 / 8
 
 
 def literal(value):
@@ -54,8 +55,7 @@ def print_nodes(name, doc, nodes):
     print(f"\n/// {doc}")
     print(f"pub(super) const {name}: [Node; {len(nodes)}] = [")
     for t, weight in nodes:
-        fields = (literal(t * t), literal(weight), literal(weight * t * t))
-        print("    Node { t_squared: %s, weight: %s, weight_t_squared: %s }," % fields)
+        print(f"    Node {{ t_squared: {literal(t * t)}, inverse_weight: {literal(1 / weight)} }},")
     print("];")
 
 
@@ -71,7 +71,7 @@ def main():
     print("//! Nodes, weights and polynomials of the Voigt kernel.")
     print("//!")
     print("//! Written by `reference-checks/voigt/make_rules.py` from 50-digit arithmetic; change the script, not this file.")
-    print("\n#![allow(clippy::excessive_precision, clippy::unreadable_literal)]")
+    print("\n#![allow(clippy::approx_constant, clippy::excessive_precision, clippy::unreadable_literal)]")
     print("\nuse super::quadrature::Node;")
     for name, step, count in (("FULL", mp.mpf(33) / 64, 12), ("FAST", mp.mpf(3) / 4, 6)):
         for parity, shift in (("ON", mp.mpf(0)), ("BETWEEN", mp.mpf(1) / 2)):
@@ -85,11 +85,14 @@ def main():
     for points in (12, 8, 6, 4, 2):
         nodes = [(t, 2 * w / mp.pi) for t, w in gauss_hermite(points)]
         print_nodes(f"HERMITE_{points}", f"Gauss-Hermite rule with {points} points.", nodes)
-    ln2_half, quarter_pi = mp.log(2) / 2, mp.pi / 4
+    half, quarter = mp.mpf(1) / 2, mp.mpf(1) / 4
     for name, exp_terms, sin_terms, cos_terms in (("FULL", 11, 7, 6), ("FAST", 6, 4, 3)):
-        print_polynomial(f"EXP_{name}", "exp(r) on |r| <= ln(2)/2.", chebyshev_polynomial(mp.exp, -ln2_half, ln2_half, exp_terms))
-        print_polynomial(f"SIN_{name}", "sin(r)/r in powers of r², |r| <= pi/4.", chebyshev_polynomial(sine_series, 0, quarter_pi**2, sin_terms))
-        print_polynomial(f"COS_{name}", "(1 - cos r)/r² in powers of r², |r| <= pi/4.", chebyshev_polynomial(cosine_rest, 0, quarter_pi**2, cos_terms))
+        for title, doc, function, low, high, terms in (
+            ("EXP", "2^r on |r| <= 1/2.", lambda r: mp.power(2, r), -half, half, exp_terms),
+            ("SIN", "sin(pi r/2)/r in powers of r², |r| <= 1/2.", half_turn_sine, 0, quarter, sin_terms),
+            ("COS", "(1 - cos(pi r/2))/r² in powers of r², |r| <= 1/2.", half_turn_cosine, 0, quarter, cos_terms),
+        ):
+            print_polynomial(f"{title}_{name}", doc, chebyshev_polynomial(function, low, high, terms))
 
 
 if __name__ == "__main__":

@@ -18,11 +18,11 @@ pub trait Accuracy: Copy + Send + Sync + 'static {
     const CORE_RADIUS_SQUARED: f64;
     /// `|z|²` from which the Gauss-Hermite rules with 1, 2, 3 and 4 pairs of nodes hold; where none does, that with 6 is taken.
     const WING_RADII_SQUARED: [f64; 4];
-    /// Coefficients of `exp(r)`, `|r| <= ln(2)/2`.
+    /// Coefficients of `2^r`, `|r| <= 1/2`.
     const EXP: &'static [f64];
-    /// Coefficients of `sin(r)/r` in `r²`, `|r| <= pi/4`.
+    /// Coefficients of `sin(pi r/2)/r` in `r²`, `|r| <= 1/2`.
     const SIN: &'static [f64];
-    /// Coefficients of `(1 - cos r)/r²` in `r²`, `|r| <= pi/4`.
+    /// Coefficients of `(1 - cos(pi r/2))/r²` in `r²`, `|r| <= 1/2`.
     const COS: &'static [f64];
 
     #[doc(hidden)]

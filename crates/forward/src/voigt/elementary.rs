@@ -4,15 +4,7 @@ use super::accuracy::Accuracy;
 use super::arithmetic::Arithmetic;
 
 /// Adding and subtracting this rounds to an integer, which then stands in the low bits of the sum.
-pub(super) const ROUNDER: f64 = 6_755_399_441_055_744.0; // 1.5 * 2^52
-
-/// `ln 2` in two parts; the first has 21 trailing zero bits, so that its product with a small integer is exact.
-const LN_2_HEAD: f64 = 6.931_471_803_691_238e-1;
-const LN_2_TAIL: f64 = 1.908_214_929_270_587_7e-10;
-
-/// `pi / 2` in two parts, the first with 33 significant bits.
-pub(super) const HALF_PI_HEAD: f64 = 1.570_796_326_734_125_6;
-pub(super) const HALF_PI_TAIL: f64 = 6.077_100_506_506_192e-11;
+const ROUNDER: f64 = 6_755_399_441_055_744.0; // 1.5 * 2^52
 
 /// A polynomial with the constant first.
 #[inline(always)]
@@ -24,16 +16,43 @@ fn polynomial<R: Arithmetic>(coefficients: &[f64], x: f64) -> f64 {
     value
 }
 
-/// `exp(exponent)` for `exponent <= 0`; below -700 the value at -700.
+/// A number in units in which its integer part can be split off exactly.
+#[derive(Clone, Copy)]
+pub(super) struct Split {
+    /// The nearest integer stands in the lowest bits.
+    pub integer_bits: u64,
+    /// In `-1/2..=1/2`.
+    pub rest: f64,
+}
+
+impl Split {
+    #[inline(always)]
+    pub fn of(value: f64) -> Self {
+        let shifted = value + ROUNDER;
+        Self {
+            integer_bits: shifted.to_bits(),
+            rest: value - (shifted - ROUNDER),
+        }
+    }
+
+    #[inline(always)]
+    pub fn is_odd(self) -> bool {
+        self.integer_bits & 1 == 1
+    }
+}
+
+/// `2^exponent` for `exponent <= 0`; below -1000 the value at -1000.
+///
+/// The rounding of the exponent is that of the result: 1e-16 of it for each unit.
 #[inline(always)]
-pub(super) fn exp<A: Accuracy, R: Arithmetic>(exponent: f64) -> f64 {
-    let exponent = if exponent > -700.0 { exponent } else { -700.0 };
-    let shifted = R::mul_add(exponent, std::f64::consts::LOG2_E, ROUNDER);
-    let power = shifted - ROUNDER;
-    let rest = R::mul_add(-power, LN_2_TAIL, R::mul_add(-power, LN_2_HEAD, exponent));
-    let mantissa = polynomial::<R>(A::EXP, rest);
-    // The integer in the low bits of `shifted` is added to the exponent of the mantissa.
-    f64::from_bits(mantissa.to_bits().wrapping_add(shifted.to_bits() << 52))
+pub(super) fn power_of_two<A: Accuracy, R: Arithmetic>(exponent: f64) -> f64 {
+    let split = Split::of(if exponent > -1000.0 {
+        exponent
+    } else {
+        -1000.0
+    });
+    let mantissa = polynomial::<R>(A::EXP, split.rest);
+    f64::from_bits(mantissa.to_bits().wrapping_add(split.integer_bits << 52))
 }
 
 /// Sine of an angle and one minus its cosine.
@@ -44,11 +63,12 @@ pub(super) struct Angle {
 }
 
 impl Angle {
-    /// Of twice `half`, for `|half| <= pi/4`.
+    /// Of `pi * half_turns`, for `|half_turns| <= 1/2`.
     #[inline(always)]
-    pub fn twice<A: Accuracy, R: Arithmetic>(half: f64) -> Self {
-        let square = half * half;
-        let sin = half * polynomial::<R>(A::SIN, square);
+    pub fn of_half_turns<A: Accuracy, R: Arithmetic>(half_turns: f64) -> Self {
+        // From half the angle, whose polynomials are short.
+        let square = half_turns * half_turns;
+        let sin = half_turns * polynomial::<R>(A::SIN, square);
         let one_minus_cos = square * polynomial::<R>(A::COS, square);
         let twice_sin = sin + sin;
         Self {

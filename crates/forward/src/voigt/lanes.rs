@@ -1,11 +1,11 @@
 //! The lane body: a block of points with one damping parameter, ready to be inlined into a larger vector kernel.
 
-use std::f64::consts::{FRAC_2_PI, PI};
+use std::f64::consts::{FRAC_2_PI, LOG2_E, PI};
 use std::marker::PhantomData;
 
 use super::accuracy::Accuracy;
 use super::arithmetic::Arithmetic;
-use super::elementary::{Angle, HALF_PI_HEAD, HALF_PI_TAIL, ROUNDER, exp};
+use super::elementary::{Angle, Split, power_of_two};
 use super::quadrature::{Fraction, Node, Nodes, Point};
 use super::{rules, scalar};
 
@@ -13,7 +13,7 @@ use super::{rules, scalar};
 const TWO_OVER_SQRT_PI: f64 = std::f64::consts::FRAC_2_SQRT_PI;
 
 /// Beyond this `|z|²` the product of all denominators of a rule could overflow: the core rule, the first wing rules, the last one.
-const CORE_OVERFLOW_RADIUS_SQUARED: f64 = 1e10;
+const CORE_OVERFLOW_RADIUS_SQUARED: f64 = 1e8;
 const WING_OVERFLOW_RADIUS_SQUARED: f64 = 1e20;
 const FAR_OVERFLOW_RADIUS_SQUARED: f64 = 1e120;
 
@@ -23,6 +23,8 @@ pub struct Damping<A> {
     y: f64,
     y_squared: f64,
     four_y_squared: f64,
+    /// `2 y / pi`: `exp(-2 i x y)` makes so many half turns for each unit of `x`.
+    half_turns_per_x: f64,
     /// `p = exp(-2 pi y / h)`, the size of the pole's image.
     image: f64,
     /// `(1 + p)²`.
@@ -49,6 +51,7 @@ impl<A: Accuracy> Damping<A> {
             y,
             y_squared: y * y,
             four_y_squared: 4.0 * y * y,
+            half_turns_per_x: FRAC_2_PI * y,
             image,
             one_plus_image_squared: (1.0 + image) * (1.0 + image),
             amplitude,
@@ -180,30 +183,19 @@ fn point<A>(x: f64, damping: &Damping<A>) -> (f64, Point) {
 /// ```
 #[inline(always)]
 fn core<A: Accuracy, R: Arithmetic>(x: f64, damping: &Damping<A>) -> (f64, f64) {
-    let shifted = R::mul_add(x, 2.0 / A::STEP, ROUNDER);
-    let half_steps = shifted - ROUNDER;
-    let odd = shifted.to_bits() & 1 == 1;
-    let phase = Angle::twice::<A, R>(R::mul_add(-half_steps, 0.5 * A::STEP, x) * (PI / A::STEP));
-
-    let product = x * damping.y;
-    let turned = R::mul_add(product, FRAC_2_PI, ROUNDER);
-    let turns = turned - ROUNDER;
-    let rest = R::mul_add(
-        -turns,
-        HALF_PI_TAIL,
-        R::mul_add(-turns, HALF_PI_HEAD, product),
-    );
-    let rotation = Angle::twice::<A, R>(rest);
-
-    let gauss = damping.amplitude * exp::<A, R>(-(x * x));
-    // An odd number of half turns of the rotation changes the sign.
-    let gauss = f64::from_bits(gauss.to_bits() ^ (turned.to_bits() << 63));
+    let half_steps = Split::of(x * (2.0 / A::STEP));
+    let phase = Angle::of_half_turns::<A, R>(half_steps.rest);
+    let half_turns = Split::of(x * damping.half_turns_per_x);
+    let rotation = Angle::of_half_turns::<A, R>(half_turns.rest);
+    let gauss = damping.amplitude * power_of_two::<A, R>(x * x * -LOG2_E);
+    // An odd number of half turns changes the sign of the rotation.
+    let gauss = f64::from_bits(gauss.to_bits() ^ (half_turns.integer_bits << 63));
 
     // (p + cos + i sin)(cos - i sin), and the square of the first factor.
     let sum = (1.0 + damping.image) - phase.one_minus_cos;
     let cos = 1.0 - rotation.one_minus_cos;
-    let residue_re = gauss * R::mul_add(sum, cos, phase.sin * rotation.sin);
-    let residue_im = gauss * R::mul_add(phase.sin, cos, -(sum * rotation.sin));
+    let residue_re = R::mul_add(sum, cos, phase.sin * rotation.sin);
+    let residue_im = R::mul_add(phase.sin, cos, -(sum * rotation.sin));
     let residue_divisor = R::mul_add(
         -2.0 * damping.image,
         phase.one_minus_cos,
@@ -212,17 +204,18 @@ fn core<A: Accuracy, R: Arithmetic>(x: f64, damping: &Damping<A>) -> (f64, f64) 
 
     let (radius_squared, point) = point(x, damping);
     let nodes = EitherRule {
-        odd,
+        odd: half_steps.is_odd(),
         on: A::on(),
         between: A::between(),
     };
     let total = Fraction::sum::<R>(point, nodes, nodes.on.len());
-    let inverse = 1.0 / (total.divisor * residue_divisor);
+    let inverse = 1.0 / total.divisor;
+    let gauss = gauss / residue_divisor;
     let rule_re = damping.y * R::mul_add(radius_squared, total.s0, total.s1);
     let rule_im = x * R::mul_add(radius_squared, total.s0, -total.s1);
     (
-        R::mul_add(rule_re, residue_divisor, residue_re * total.divisor) * inverse,
-        R::mul_add(rule_im, residue_divisor, residue_im * total.divisor) * inverse,
+        R::mul_add(rule_re, inverse, gauss * residue_re),
+        R::mul_add(rule_im, inverse, gauss * residue_im),
     )
 }
 
@@ -244,11 +237,10 @@ impl Nodes for EitherRule {
             } else {
                 between.t_squared
             },
-            weight: if self.odd { on.weight } else { between.weight },
-            weight_t_squared: if self.odd {
-                on.weight_t_squared
+            inverse_weight: if self.odd {
+                on.inverse_weight
             } else {
-                between.weight_t_squared
+                between.inverse_weight
             },
         }
     }

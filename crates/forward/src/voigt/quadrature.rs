@@ -17,9 +17,8 @@ use super::arithmetic::Arithmetic;
 #[derive(Clone, Copy, Debug)]
 pub struct Node {
     pub(super) t_squared: f64,
-    /// The weight of the pair, divided by pi.
-    pub(super) weight: f64,
-    pub(super) weight_t_squared: f64,
+    /// One over the weight of the pair, times pi.
+    pub(super) inverse_weight: f64,
 }
 
 /// A rule as a point sees it.
@@ -56,9 +55,10 @@ impl Fraction {
     fn of<R: Arithmetic>(point: Point, node: Node) -> Self {
         let distance = point.re_z_squared - node.t_squared;
         Self {
-            s0: node.weight,
-            s1: node.weight_t_squared,
-            divisor: R::mul_add(distance, distance, point.im_z_squared_squared),
+            s0: 1.0,
+            s1: node.t_squared,
+            divisor: R::mul_add(distance, distance, point.im_z_squared_squared)
+                * node.inverse_weight,
         }
     }
 
@@ -73,7 +73,13 @@ impl Fraction {
 
     #[inline(always)]
     fn pair<R: Arithmetic>(point: Point, nodes: impl Nodes, first: usize) -> Self {
-        Self::of::<R>(point, nodes.at(first)).join::<R>(Self::of::<R>(point, nodes.at(first + 1)))
+        let a = Self::of::<R>(point, nodes.at(first));
+        let b = Self::of::<R>(point, nodes.at(first + 1));
+        Self {
+            s0: a.divisor + b.divisor,
+            s1: R::mul_add(a.s1, b.divisor, b.s1 * a.divisor),
+            divisor: a.divisor * b.divisor,
+        }
     }
 
     #[inline(always)]
