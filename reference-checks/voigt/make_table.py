@@ -1,4 +1,4 @@
-"""Write the oracle table of the Voigt function: w(x + iy) = exp(-z^2) erfc(-iz) from 50-digit arithmetic.
+"""Write the oracle table of the Voigt function: w(x + iy) = exp(-z^2) erfc(-iz) and dw/dz from 50-digit arithmetic.
 
 Usage: python make_table.py > table.csv
 
@@ -74,10 +74,12 @@ def points():
 
 def main():
     print("# w(x + iy) = exp(-z^2) erfc(-iz); written by make_table.py with mpmath, 50 digits")
-    print("x,y,re,im")
+    print("x,y,re,im,slope_re,slope_im")
     for x, y in points():
         re, im = w(x, y)
-        print(f"{x!r},{y!r},{mp.nstr(re, 17)},{mp.nstr(im, 17)}")
+        slope = -2 * mp.mpc(x, y) * mp.mpc(re, im) + 2j / mp.sqrt(mp.pi)
+        numbers = (mp.nstr(value, 17) for value in (re, im, slope.real, slope.imag))
+        print(f"{x!r},{y!r},{','.join(numbers)}")
 
 
 if __name__ == "__main__":
