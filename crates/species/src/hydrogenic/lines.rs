@@ -37,59 +37,113 @@ pub struct Component {
 /// component. Domain: n_upper > n_lower >= 1. Source: Bethe and Salpeter (1957), sections 60 and 64.
 /// Accuracy: 1e-4 of A against the published tables (`reference-checks`, `hydrogen_a_values_are_the_published_ones`).
 pub fn components(nucleus: Nucleus, n_upper: u32, n_lower: u32) -> Vec<Component> {
-    let mut found = Vec::new();
-    for upper in energy::states(n_upper) {
-        for lower in energy::states(n_lower) {
-            let a_ki_per_s = decay_rate(nucleus, (n_upper, upper), (n_lower, lower));
-            if a_ki_per_s <= 0.0 {
-                continue;
+    let multiplets = all_multiplets(nucleus, n_upper);
+    let wanted = multiplets
+        .into_iter()
+        .find(|multiplet| (multiplet.n_upper, multiplet.n_lower) == (n_upper, n_lower));
+    wanted.map_or_else(Vec::new, |multiplet| multiplet.components)
+}
+
+/// All components between two shells.
+struct Multiplet {
+    n_upper: u32,
+    n_lower: u32,
+    components: Vec<Component>,
+}
+
+/// Place of the state (l, 2j) among those of its shell.
+fn place((l, twice_j): (u32, u32)) -> usize {
+    (l + twice_j / 2) as usize
+}
+
+/// Every multiplet up to shell `n_max`; together they hold every decay, so that each rate is computed once.
+fn all_multiplets(nucleus: Nucleus, n_max: u32) -> Vec<Multiplet> {
+    let energies_j: Vec<Vec<f64>> = (1..=n_max)
+        .map(|n| {
+            energy::states(n)
+                .map(|(l, twice_j)| level_energy_j(nucleus, n, l, twice_j))
+                .collect()
+        })
+        .collect();
+    let shell = |n: u32| &energies_j[n as usize - 1];
+    let mut decays: Vec<Vec<f64>> = energies_j
+        .iter()
+        .map(|shell| vec![0.0; shell.len()])
+        .collect();
+    let mut multiplets = Vec::new();
+    for n_lower in 1..n_max {
+        for n_upper in n_lower + 1..=n_max {
+            let components = multiplet(
+                nucleus,
+                (n_upper, shell(n_upper)),
+                (n_lower, shell(n_lower)),
+            );
+            for part in &components {
+                decays[n_upper as usize - 1][place(part.upper)] += part.a_ki_per_s;
             }
-            let e_lower_j = level_energy_j(nucleus, n_lower, lower.0, lower.1);
-            let photon_j = level_energy_j(nucleus, n_upper, upper.0, upper.1) - e_lower_j;
-            found.push(Component {
-                wavelength_vac_m: PLANCK_J_S * SPEED_OF_LIGHT_M_PER_S / photon_j,
-                a_ki_per_s,
-                e_lower_j,
-                upper,
-                lower,
-                gamma_per_s: total_decay_rate(nucleus, n_upper, upper)
-                    + total_decay_rate(nucleus, n_lower, lower),
+            multiplets.push(Multiplet {
+                n_upper,
+                n_lower,
+                components,
             });
+        }
+    }
+    for Multiplet {
+        n_upper,
+        n_lower,
+        components,
+    } in &mut multiplets
+    {
+        for part in components {
+            let decay = |n: u32, state| decays[n as usize - 1][place(state)];
+            part.gamma_per_s = decay(*n_upper, part.upper) + decay(*n_lower, part.lower);
+        }
+    }
+    multiplets
+}
+
+/// The components between two shells, sorted by wavelength, their broadening still open.
+fn multiplet(
+    nucleus: Nucleus,
+    (n_upper, upper_j): (u32, &Vec<f64>),
+    (n_lower, lower_j): (u32, &Vec<f64>),
+) -> Vec<Component> {
+    let (z, mass) = (f64::from(nucleus.charge()), nucleus.mass_in_electrons());
+    // The nucleus swings too: in an ion the dipole about the centre of mass is a little larger than e r.
+    let effective_charge = (mass + z) / (mass + 1.0);
+    let unit_m = BOHR_RADIUS_M / (nucleus.reduced_mass() * z) * effective_charge;
+    let mut found = Vec::new();
+    for l in 0..n_upper {
+        for l_lower in (l.saturating_sub(1)..=l + 1).filter(|other| *other != l && *other < n_lower)
+        {
+            let radius_m = unit_m * radial_integral(n_upper, l, n_lower, l_lower);
+            let whole = 4.0 * FINE_STRUCTURE / (3.0 * SPEED_OF_LIGHT_M_PER_S.powi(2))
+                * f64::from(l.max(l_lower))
+                / f64::from(2 * l + 1)
+                * radius_m.powi(2);
+            for upper in energy::states(n_upper).filter(|state| state.0 == l) {
+                for lower in energy::states(n_lower).filter(|state| state.0 == l_lower) {
+                    let part = fine_structure_part(upper, lower);
+                    if part == 0.0 {
+                        continue;
+                    }
+                    let e_lower_j = lower_j[place(lower)];
+                    let photon_j = upper_j[place(upper)] - e_lower_j;
+                    let omega_per_s = 2.0 * std::f64::consts::PI * photon_j / PLANCK_J_S;
+                    found.push(Component {
+                        wavelength_vac_m: PLANCK_J_S * SPEED_OF_LIGHT_M_PER_S / photon_j,
+                        a_ki_per_s: whole * omega_per_s.powi(3) * part,
+                        e_lower_j,
+                        upper,
+                        lower,
+                        gamma_per_s: 0.0,
+                    });
+                }
+            }
         }
     }
     found.sort_by(|a, b| a.wavelength_vac_m.total_cmp(&b.wavelength_vac_m));
     found
-}
-
-/// A state by its shell and its (l, 2j).
-type State = (u32, (u32, u32));
-
-fn decay_rate(nucleus: Nucleus, (n, upper): State, (n_lower, lower): State) -> f64 {
-    let part = fine_structure_part(upper, lower);
-    if part == 0.0 {
-        return 0.0;
-    }
-    let ((l, twice_j), (l_lower, twice_j_lower)) = (upper, lower);
-    let photon_j = level_energy_j(nucleus, n, l, twice_j)
-        - level_energy_j(nucleus, n_lower, l_lower, twice_j_lower);
-    let omega_per_s = 2.0 * std::f64::consts::PI * photon_j / PLANCK_J_S;
-    let (z, mass) = (f64::from(nucleus.charge()), nucleus.mass_in_electrons());
-    let radius_m =
-        BOHR_RADIUS_M / (nucleus.reduced_mass() * z) * radial_integral(n, l, n_lower, l_lower);
-    // The nucleus swings too: in an ion the dipole about the centre of mass is a little larger than e r.
-    let effective_charge = (mass + z) / (mass + 1.0);
-    let angular = f64::from(l.max(l_lower)) / f64::from(2 * l + 1);
-    4.0 * FINE_STRUCTURE * omega_per_s.powi(3) / (3.0 * SPEED_OF_LIGHT_M_PER_S.powi(2))
-        * angular
-        * (radius_m * effective_charge).powi(2)
-        * part
-}
-
-fn total_decay_rate(nucleus: Nucleus, n: u32, state: (u32, u32)) -> f64 {
-    (1..n)
-        .flat_map(|n_lower| energy::states(n_lower).map(move |lower| (n_lower, lower)))
-        .map(|lower| decay_rate(nucleus, (n, state), lower))
-        .sum()
 }
 
 /// The part of the decays (l, j) -> l' that ends in j': (2j' + 1)(2l + 1) times the square of the 6j symbol.
@@ -117,19 +171,16 @@ fn fine_structure_part((l, twice_j): (u32, u32), (l_lower, twice_j_lower): (u32,
 pub(super) fn merged(nucleus: Nucleus, n_max: u32) -> Vec<Line> {
     let source: Arc<str> = "hydrogenic".into();
     let mut lines = Vec::new();
-    for n_lower in 1..n_max {
-        for n_upper in n_lower + 1..=n_max {
-            let parts = components(nucleus, n_upper, n_lower);
-            if parts
-                .first()
-                .is_some_and(|part| part.wavelength_vac_m <= LONGEST_WAVELENGTH_M)
-            {
-                lines.extend(
-                    clusters(&parts)
-                        .iter()
-                        .map(|cluster| line(cluster, &source)),
-                );
-            }
+    for Multiplet { components, .. } in all_multiplets(nucleus, n_max) {
+        let shortest_m = components
+            .first()
+            .map_or(f64::INFINITY, |part| part.wavelength_vac_m);
+        if shortest_m <= LONGEST_WAVELENGTH_M {
+            lines.extend(
+                clusters(&components)
+                    .iter()
+                    .map(|cluster| line(cluster, &source)),
+            );
         }
     }
     lines
