@@ -1,0 +1,192 @@
+#!/usr/bin/env python3
+"""The maps of the Kestrel Veil as one picture.
+
+    picture.py CUBE.h5 MAPS.h5 PICTURE.png
+"""
+
+import sys
+
+import h5py
+import matplotlib
+
+matplotlib.use("Agg")
+import matplotlib.pyplot as plt
+import numpy as np
+from compare import read_maps
+from matplotlib.colors import BoundaryNorm, ListedColormap
+from matplotlib.patches import Patch
+
+INK = "#1b2430"
+PALE = "#e7e9ec"  # no answer
+# Three colours that stay apart for colour-blind readers (Okabe & Ito 2008).
+SPECTRUM_COLOURS = ["#0072b2", "#4d4d4d", "#d55e00"]
+STYLE = {
+    "font.family": "DejaVu Sans",
+    "font.size": 8.5,
+    "axes.edgecolor": INK,
+    "axes.labelcolor": INK,
+    "axes.linewidth": 0.6,
+    "axes.titlesize": 9.5,
+    "axes.titlelocation": "left",
+    "text.color": INK,
+    "xtick.color": INK,
+    "ytick.color": INK,
+    "xtick.major.width": 0.6,
+    "ytick.major.width": 0.6,
+    "xtick.direction": "out",
+}
+
+# Map, title, label of the colour bar, colours.
+PANELS = [
+    ("cloud1_temperature", "Gas temperature", "K", "inferno"),
+    ("cloud1_velocity", "Velocity", "km s$^{-1}$, positive recedes", "berlin"),
+    ("cloud1_log10_column_Ca_II", "Ca II column", "log$_{10}$ (cm$^{-2}$)", "viridis"),
+    ("cloud1_log10_column_Na_I", "Na I column", "log$_{10}$ (cm$^{-2}$)", "viridis"),
+    ("background_temperature", "Star field behind it", "K", "cividis"),
+    ("cloud1_temperature_sigma", "Uncertainty of the gas temperature", "K (1 sigma)", "magma"),
+    ("cloud1_log10_column_K_I", "K I column", "log$_{10}$ (cm$^{-2}$)", "viridis"),
+]
+# Shown in this order of precedence.
+FLAGS = [
+    ("not_detected", "nothing detected", "#c8ccd2"),
+    ("no_contrast", "as hot as the stars", "#cc79a7"),
+    ("at_bound", "at a bound", "#e69f00"),
+    ("saturated", "saturated", "#56b4e9"),
+    ("degenerate", "cannot be told apart", "#8c6bb1"),
+]
+
+
+def draw_map(axes, figure, values, title, label, colours, centred=False):
+    """One map with its colour bar; pixels without an answer stay pale."""
+    shown = np.ma.masked_invalid(values)
+    inside = shown.compressed()
+    low, high = np.percentile(inside, [1, 99]) if inside.size else (0, 1)
+    if centred:
+        high = max(abs(low), abs(high))
+        low = -high
+    axes.set_facecolor(PALE)
+    image = axes.imshow(shown, origin="lower", cmap=colours, vmin=low, vmax=high, interpolation="nearest")
+    axes.set_title(title)
+    axes.set_xticks([])
+    axes.set_yticks([])
+    bar = figure.colorbar(image, ax=axes, orientation="horizontal", pad=0.03, shrink=0.94, aspect=28)
+    bar.set_label(label, labelpad=2)
+    bar.outline.set_linewidth(0.4)
+    bar.locator = matplotlib.ticker.MaxNLocator(5)
+    bar.update_ticks()
+
+
+def draw_flags(axes, flags, bits):
+    """Which pixels to trust, and why not."""
+    state = np.full(flags.shape, len(FLAGS) + 1)
+    state[flags == 0] = 0
+    for place, (name, _, _) in reversed(list(enumerate(FLAGS, start=1))):
+        state[flags & bits.get(name, 0) > 0] = place
+    legend = [("no flag", "#1f7a5c"), *[(label, colour) for _, label, colour in FLAGS], ("other", "#000000")]
+    present = [place for place in range(len(legend)) if np.any(state == place)]
+    axes.imshow(
+        state,
+        origin="lower",
+        cmap=ListedColormap([colour for _, colour in legend]),
+        norm=BoundaryNorm(np.arange(len(legend) + 1) - 0.5, len(legend)),
+        interpolation="nearest",
+    )
+    axes.set_title("Can it be trusted?")
+    axes.set_xticks([])
+    axes.set_yticks([])
+    patches = [Patch(color=legend[place][1], label=legend[place][0]) for place in present]
+    axes.legend(
+        handles=patches,
+        loc="upper center",
+        bbox_to_anchor=(0.5, -0.02),
+        ncols=2,
+        frameon=False,
+        fontsize=8,
+        handlelength=1.1,
+        columnspacing=1.2,
+    )
+
+
+def choose_pixels(maps, bits):
+    """One pixel each in absorption, as hot as its background, and in emission."""
+    contrast = maps["cloud1_temperature"] - maps["background_temperature"]
+    column = maps["cloud1_log10_column_Ca_II"]
+    good = (maps["flags"] == 0) & np.isfinite(contrast)
+    chosen = []
+    for wanted, where in [
+        (lambda: np.where(good, contrast - 0.0, np.inf), good & (contrast < 0)),
+        (None, maps["flags"] & bits["no_contrast"] > 0),
+        (lambda: np.where(good, -contrast, np.inf), good & (contrast > 0)),
+    ]:
+        if not np.any(where):
+            chosen.append(None)
+            continue
+        if wanted is None:
+            score = np.where(where, -np.nan_to_num(column, nan=0.0), np.inf)
+        else:
+            # Deep contrast and much gas.
+            score = np.where(where, wanted() / 1000 - 1.5 * np.nan_to_num(column, nan=0.0), np.inf)
+        chosen.append(np.unravel_index(np.argmin(score), score.shape))
+    return chosen
+
+
+def draw_spectra(slots, cube_path, pixels):
+    """The spectra of three pixels in the four windows of the spectrograph."""
+    labels = ["cooler than the stars", "as hot as the stars", "hotter than the stars"]
+    with h5py.File(cube_path) as source:
+        wavelength = source["wavelength"][...]
+        unit = source["wavelength"].attrs.get("units", "nm")
+        if (unit.decode() if isinstance(unit, bytes) else unit) == "m":
+            wavelength = wavelength * 1e9
+        spectra = [None if pixel is None else source["intensity"][pixel[0], pixel[1], :] for pixel in pixels]
+    gaps = np.flatnonzero(np.diff(wavelength) > 5)
+    windows = np.split(np.arange(len(wavelength)), gaps + 1)
+    names = ["Ca II K, H", "Na I D", "K I", "Ca II triplet"]
+    for axes, window, name in zip(slots, windows, names):
+        inner = window[2:-2]
+        for spectrum, colour, label, lift in zip(spectra, SPECTRUM_COLOURS, labels, (-0.25, 0.0, 0.25)):
+            if spectrum is None:
+                continue
+            level = np.median(spectrum[inner])
+            axes.step(wavelength[inner], spectrum[inner] / level + lift, where="mid", color=colour, lw=0.9, label=label)
+        axes.set_title(name)
+        axes.set_xlim(wavelength[inner[0]], wavelength[inner[-1]])
+        axes.xaxis.set_major_locator(matplotlib.ticker.MaxNLocator(4))
+        axes.spines[["top", "right"]].set_visible(False)
+        axes.set_xlabel("vacuum wavelength, nm")
+    slots[0].set_ylabel("radiance / its median,\nshifted apart by 0.25")
+    for axes in slots[1:]:
+        axes.sharey(slots[0])
+        axes.tick_params(labelleft=False)
+    slots[-1].legend(loc="upper right", bbox_to_anchor=(1.0, 1.32), ncols=3, frameon=False, fontsize=8)
+
+
+def main(cube_path, maps_path, picture_path):
+    """Draws and saves."""
+    plt.rcParams.update(STYLE)
+    maps, _, bits = read_maps(maps_path)
+    figure = plt.figure(figsize=(12.4, 10.6), layout="constrained")
+    figure.get_layout_engine().set(w_pad=0.06, h_pad=0.07, hspace=0.02)
+    grid = figure.add_gridspec(3, 4, height_ratios=[1.28, 1.28, 0.78])
+    pixels = choose_pixels(maps, bits)
+    first = None
+    for place, (name, title, label, colours) in enumerate(PANELS):
+        axes = figure.add_subplot(grid[place // 4, place % 4])
+        first = first or axes
+        draw_map(axes, figure, maps[name], title, label, colours, centred=name.endswith("velocity"))
+    for pixel, colour in zip(pixels, SPECTRUM_COLOURS):
+        if pixel is not None:
+            first.plot(pixel[1], pixel[0], "o", ms=7, mfc="none", mec="white", mew=2.6)
+            first.plot(pixel[1], pixel[0], "o", ms=7, mfc="none", mec=colour, mew=1.3)
+    draw_flags(figure.add_subplot(grid[1, 3]), maps["flags"], bits)
+    draw_spectra([figure.add_subplot(grid[2, column]) for column in range(4)], cube_path, pixels)
+    figure.suptitle(
+        "The Kestrel Veil, an invented nebula in front of a star field", x=0.012, ha="left", fontsize=13, weight="bold"
+    )
+    figure.savefig(picture_path, dpi=150)
+
+
+if __name__ == "__main__":
+    if len(sys.argv) != 4:
+        sys.exit(__doc__)
+    main(*sys.argv[1:])
