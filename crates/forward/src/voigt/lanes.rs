@@ -109,9 +109,7 @@ pub fn w_lanes<A: Accuracy, R: Arithmetic, const L: usize>(
     {
         rule::<A, R, L>(x, damping, &rules::HERMITE_2, re, im);
     } else {
-        for lane in 0..L {
-            (re[lane], im[lane]) = scalar::w(x[lane], damping.y);
-        }
+        one_by_one(x, damping.y, re, im);
     }
 }
 
@@ -140,6 +138,26 @@ pub fn slope_lanes<R: Arithmetic, const L: usize>(
             R::mul_add(x[lane], im[lane], y * re[lane]),
             TWO_OVER_SQRT_PI,
         );
+    }
+}
+
+/// Blocks that no rule serves as a whole, with huge or undefined points among others.
+///
+/// A call, so that the vector code around it need not take its lanes apart.
+#[cold]
+#[inline(never)]
+fn one_by_one<const L: usize>(x: &[f64; L], y: f64, re: &mut [f64; L], im: &mut [f64; L]) {
+    for lane in 0..L {
+        (re[lane], im[lane]) = scalar::w(x[lane], y);
+    }
+}
+
+/// What the wing rules do not know of. A call for the same reason.
+#[cold]
+#[inline(never)]
+fn add_gaussian<const L: usize>(x: &[f64; L], re: &mut [f64; L]) {
+    for lane in 0..L {
+        re[lane] += scalar::gaussian(x[lane]);
     }
 }
 
@@ -287,8 +305,6 @@ fn wing<A: Accuracy, R: Arithmetic, const L: usize>(
         rule::<A, R, L>(x, damping, &rules::HERMITE_12, re, im);
     }
     if damping.y < A::GAUSSIAN_IN_WING_BELOW_Y {
-        for lane in 0..L {
-            re[lane] += scalar::gaussian(x[lane]);
-        }
+        add_gaussian(x, re);
     }
 }

@@ -23,7 +23,6 @@ const ONE_OVER_SQRT_PI: f64 = std::f64::consts::FRAC_2_SQRT_PI / 2.0;
 ///
 /// Accuracy: each component within 1e-13 of its own size for `y = 0` and `1e-8 <= y <= 1e3`, `|x| <= 1e4`:
 /// `every_path_meets_the_oracle_table`.
-#[inline(never)]
 #[must_use]
 pub fn w(x: f64, y: f64) -> (f64, f64) {
     if x.is_nan() || y.is_nan() || y < 0.0 {
@@ -40,7 +39,6 @@ pub fn w(x: f64, y: f64) -> (f64, f64) {
 }
 
 /// `exp(-x²)` with the rounding of the square made good.
-#[inline(never)]
 #[must_use]
 pub fn gaussian(x: f64) -> f64 {
     if !x.is_finite() {
