@@ -141,22 +141,35 @@ impl<A: Accuracy> WithSimd for Blocks<'_, A> {
 }
 
 impl<A: Accuracy> Blocks<'_, A> {
-    /// Whole blocks, then the tail in a padded one.
+    /// Whole blocks; the last one reaches back over points that are done already, so that there is one copy of the kernel and no tail.
     #[inline(always)]
     fn evaluate<R: Arithmetic>(self) {
-        let (x_blocks, x_tail) = self.x.as_chunks::<LANES>();
-        let (re_blocks, re_tail) = self.re.as_chunks_mut::<LANES>();
-        let (im_blocks, im_tail) = self.im.as_chunks_mut::<LANES>();
-        for ((x, re), im) in x_blocks.iter().zip(re_blocks).zip(im_blocks) {
-            w_lanes::<A, R, LANES>(x, self.damping, re, im);
+        let length = self.x.len();
+        let Some(&last) = self.x.last() else { return };
+        let mut padded_x = [last; LANES];
+        let (mut padded_re, mut padded_im) = ([0.0; LANES], [0.0; LANES]);
+        let short = length < LANES;
+        let (x, re, im) = if short {
+            padded_x[..length].copy_from_slice(self.x);
+            (&padded_x[..], &mut padded_re[..], &mut padded_im[..])
+        } else {
+            (self.x, &mut *self.re, &mut *self.im)
+        };
+        let mut start = 0;
+        while start < length {
+            let first = start.min(x.len() - LANES);
+            if let (Some(x), Some(re), Some(im)) = (
+                x[first..].first_chunk(),
+                re[first..].first_chunk_mut(),
+                im[first..].first_chunk_mut(),
+            ) {
+                w_lanes::<A, R, LANES>(x, self.damping, re, im);
+            }
+            start += LANES;
         }
-        if let Some(&last) = x_tail.last() {
-            let mut padded = [last; LANES];
-            padded[..x_tail.len()].copy_from_slice(x_tail);
-            let (mut re, mut im) = ([0.0; LANES], [0.0; LANES]);
-            w_lanes::<A, R, LANES>(&padded, self.damping, &mut re, &mut im);
-            re_tail.copy_from_slice(&re[..x_tail.len()]);
-            im_tail.copy_from_slice(&im[..x_tail.len()]);
+        if short {
+            self.re.copy_from_slice(&padded_re[..length]);
+            self.im.copy_from_slice(&padded_im[..length]);
         }
     }
 }
