@@ -39,11 +39,11 @@ STYLE = {
 # Map, title, label of the colour bar, colours.
 PANELS = [
     ("cloud1_temperature", "Gas temperature", "K", "inferno"),
-    ("cloud1_velocity", "Velocity", "km s$^{-1}$, positive recedes", "berlin"),
+    ("cloud1_temperature_sigma", "... and its uncertainty", "K, 1 sigma", "magma"),
+    ("background_temperature", "Star field behind it", "K", "cividis"),
+    ("cloud1_velocity", "Velocity of the gas", "km s$^{-1}$, positive = receding", "berlin"),
     ("cloud1_log10_column_Ca_II", "Ca II column", "log$_{10}$ (cm$^{-2}$)", "viridis"),
     ("cloud1_log10_column_Na_I", "Na I column", "log$_{10}$ (cm$^{-2}$)", "viridis"),
-    ("background_temperature", "Star field behind it", "K", "cividis"),
-    ("cloud1_temperature_sigma", "Uncertainty of the gas temperature", "K (1 sigma)", "magma"),
     ("cloud1_log10_column_K_I", "K I column", "log$_{10}$ (cm$^{-2}$)", "viridis"),
 ]
 # Shown in this order of precedence.
@@ -84,7 +84,7 @@ def draw_flags(axes, flags, bits):
         state[flags & bits.get(name, 0) > 0] = place
     legend = [("no flag", "#1f7a5c"), *[(label, colour) for _, label, colour in FLAGS], ("other", "#000000")]
     present = [place for place in range(len(legend)) if np.any(state == place)]
-    axes.imshow(
+    image = axes.imshow(
         state,
         origin="lower",
         cmap=ListedColormap([colour for _, colour in legend]),
@@ -95,16 +95,22 @@ def draw_flags(axes, flags, bits):
     axes.set_xticks([])
     axes.set_yticks([])
     patches = [Patch(color=legend[place][1], label=legend[place][0]) for place in present]
-    axes.legend(
+    # The legend stands where the other maps have their colour bars, in a bar without colours.
+    bar = axes.figure.colorbar(image, ax=axes, orientation="horizontal", pad=0.03, shrink=0.94, aspect=28)
+    bar.set_label(" ", labelpad=2)
+    bar.outline.set_visible(False)
+    bar.solids.set_alpha(0)
+    bar.ax.tick_params(labelcolor="none", length=0)
+    bar.ax.legend(
         handles=patches,
         loc="upper center",
-        bbox_to_anchor=(0.5, -0.02),
+        bbox_to_anchor=(0.5, 1.6),
         ncols=2,
         frameon=False,
         fontsize=8,
         handlelength=1.1,
         columnspacing=1.2,
-    )
+    ).set_in_layout(False)
 
 
 def choose_pixels(maps, bits):
@@ -158,7 +164,9 @@ def draw_spectra(slots, cube_path, pixels):
     for axes in slots[1:]:
         axes.sharey(slots[0])
         axes.tick_params(labelleft=False)
-    slots[-1].legend(loc="upper right", bbox_to_anchor=(1.0, 1.32), ncols=3, frameon=False, fontsize=8)
+    middle = np.mean(wavelength[windows[0]])
+    for label, colour, height in zip(labels, SPECTRUM_COLOURS, (0.82, 1.07, 1.32)):
+        slots[0].text(middle, height, label, color=colour, fontsize=8, ha="center", va="center")
 
 
 def main(cube_path, maps_path, picture_path):

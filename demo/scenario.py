@@ -24,22 +24,24 @@ def fields():
     y, x = np.mgrid[0:SIZE, 0:SIZE] / (SIZE - 1) * 2 - 1
     turned_x, turned_y = 0.86 * x + 0.5 * y, 0.86 * y - 0.5 * x
 
-    # Two wings about a waist, and a hot knot off the centre.
-    wing = np.exp(-(((np.abs(turned_x) - 0.42) / 0.34) ** 2) - (turned_y / (0.16 + 0.42 * np.abs(turned_x))) ** 2)
-    waist = 0.55 * np.exp(-((turned_x / 0.22) ** 2) - (turned_y / 0.5) ** 2)
-    density = wing + waist + 0.06 * np.sin(9 * turned_x) * np.cos(7 * turned_y) * wing
+    # Two wings about a waist, combed into filaments, and a hot knot off the centre.
+    wing = np.exp(-(((np.abs(turned_x) - 0.42) / 0.36) ** 2) - (turned_y / (0.16 + 0.46 * np.abs(turned_x))) ** 2)
+    waist = 0.5 * np.exp(-((turned_x / 0.24) ** 2) - (turned_y / 0.55) ** 2)
+    angle, radius = np.arctan2(turned_y, np.abs(turned_x) + 0.05), np.hypot(turned_x, turned_y)
+    filaments = 1 + 0.45 * np.sin(11 * angle + 5 * radius) * np.minimum(radius / 0.5, 1)
+    density = (wing + waist) * filaments
     knot = np.exp(-(((x - 0.28) / 0.42) ** 2) - ((y - 0.12) / 0.36) ** 2)
 
     # Cooler than the stars at the rim, hotter in the knot: in between lies a line where both are equal and the
     # gas cannot be seen.
-    gas = 2900 + 900 * turned_x + 3600 * knot
+    gas = 3500 + 500 * turned_x + 3300 * knot
     stars = 4900 + 450 * x - 250 * y
     absent = density < 0.12
     column = np.log10(np.maximum(density, 1e-6))
     quantities = {
         "cloud1_temperature": gas,
         "cloud1_velocity": 110 * np.tanh(1.8 * turned_x) - 45 * turned_y,
-        "cloud1_log10_column_Ca_II": 14.4 + column,
+        "cloud1_log10_column_Ca_II": 14.8 + column,
         "cloud1_log10_column_Na_I": 12.6 + 1.2 * column - 0.2 * knot,
         "cloud1_log10_column_K_I": 11.9 + 1.2 * column - 0.3 * knot,
         "background_temperature": stars,

@@ -86,13 +86,13 @@ fn cie_standard_illuminant_a_is_a_planck_radiator() {
 fn both_ends_are_the_laws_of_rayleigh_jeans_and_wien() {
     let (c, k, h) = (299_792_458.0_f64, 1.380_649e-23, 6.626_070_15e-34);
     // 21 cm at 100 K: x = hc/λkT = 7e-4, and the law is 1 - x/2 of Rayleigh-Jeans.
-    let (wavelength_m, temperature_k) = (0.211_061, 100.0);
+    let (wavelength_m, temperature_k) = (0.211_061_f64, 100.0);
     let x = h * c / (wavelength_m * k * temperature_k);
     let rayleigh_jeans = 2.0 * c * k * temperature_k / wavelength_m.powi(4);
     let ratio = radiance(wavelength_m, temperature_k) / rayleigh_jeans;
     assert!((ratio - (1.0 - x / 2.0)).abs() < 1e-7, "{ratio}");
 
-    let (wavelength_m, temperature_k) = (200e-9, 1000.0);
+    let (wavelength_m, temperature_k) = (200e-9_f64, 1000.0);
     let wien = 2.0 * h * c * c / wavelength_m.powi(5) * (-h * c / (wavelength_m * k * temperature_k)).exp();
     assert!((radiance(wavelength_m, temperature_k) / wien - 1.0).abs() < 1e-13);
 }
