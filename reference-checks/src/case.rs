@@ -1,10 +1,5 @@
 //! Invented gas: a species with a few lines, and a setup around it, written as the files a user would write.
 
-use backlit_inverse::Problem;
-use backlit_inverse::setup::Setup;
-use backlit_species::Catalogue;
-use backlit_units::axis::SpectralAxis;
-use backlit_units::{IntensityUnit, Medium};
 use std::fmt::Write as _;
 use std::fs;
 use std::path::{Path, PathBuf};
@@ -123,25 +118,6 @@ impl Case {
         fs::write(&setup, text).unwrap();
         Case { setup, wavelength_nm }
     }
-
-    /// The case's problem: setup and channels.
-    pub fn problem(&self) -> Problem {
-        problem(&self.setup, &self.wavelength_nm)
-    }
-
-    /// The spectrum that the program predicts for it, in [`UNIT`].
-    pub fn predict(&self) -> Vec<f64> {
-        self.problem().predict().unwrap_or_else(|error| panic!("{}: {error}", self.setup.display()))
-    }
-}
-
-/// The problem of a setup file, with data in [`UNIT`] at vacuum wavelengths.
-pub fn problem(setup: &Path, wavelength_nm: &[f64]) -> Problem {
-    let setup = Setup::read(setup).unwrap_or_else(|error| panic!("{error}"));
-    let centres_m: Vec<f64> = wavelength_nm.iter().map(|nm| nm * 1e-9).collect();
-    let axis = SpectralAxis::from_centres_m(&centres_m, Medium::Vacuum).unwrap();
-    let unit: IntensityUnit = UNIT.parse().unwrap();
-    Problem::new(&setup, &axis, &unit, Catalogue::builtin(), None).unwrap_or_else(|error| panic!("{error}"))
 }
 
 /// `count` channel centres from one wavelength to another, both included.
