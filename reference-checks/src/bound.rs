@@ -14,7 +14,13 @@ pub fn cramer_rao(derivatives: &[Vec<f64>], noise: f64) -> Vec<f64> {
     let mut matrix: Vec<Vec<f64>> = (0..n)
         .map(|i| {
             let mut row: Vec<f64> = (0..n)
-                .map(|j| derivatives[i].iter().zip(&derivatives[j]).map(|(a, b)| a * b).sum::<f64>())
+                .map(|j| {
+                    derivatives[i]
+                        .iter()
+                        .zip(&derivatives[j])
+                        .map(|(a, b)| a * b)
+                        .sum::<f64>()
+                })
                 .collect();
             row.extend((0..n).map(|j| if i == j { 1.0 } else { 0.0 }));
             row
@@ -28,21 +34,29 @@ pub fn cramer_rao(derivatives: &[Vec<f64>], noise: f64) -> Vec<f64> {
         }
     }
     for column in 0..n {
-        let pivot = (column..n).max_by(|&a, &b| matrix[a][column].abs().total_cmp(&matrix[b][column].abs()));
+        let pivot = (column..n)
+            .max_by(|&a, &b| matrix[a][column].abs().total_cmp(&matrix[b][column].abs()));
         let pivot = pivot.expect("at least one parameter");
         matrix.swap(column, pivot);
-        assert!(matrix[column][column].abs() > 1e-12, "parameters that cannot be told apart");
+        assert!(
+            matrix[column][column].abs() > 1e-12,
+            "parameters that cannot be told apart"
+        );
         let divisor = matrix[column][column];
         matrix[column].iter_mut().for_each(|x| *x /= divisor);
         let pivot_row = matrix[column].clone();
         for (i, row) in matrix.iter_mut().enumerate() {
             if i != column {
                 let factor = row[column];
-                row.iter_mut().zip(&pivot_row).for_each(|(x, p)| *x -= factor * p);
+                row.iter_mut()
+                    .zip(&pivot_row)
+                    .for_each(|(x, p)| *x -= factor * p);
             }
         }
     }
-    (0..n).map(|i| noise * matrix[i][n + i].sqrt() / scale[i]).collect()
+    (0..n)
+        .map(|i| noise * matrix[i][n + i].sqrt() / scale[i])
+        .collect()
 }
 
 #[cfg(test)]

@@ -40,7 +40,8 @@ impl Line {
     /// Oscillator strength, `f = 1.4992e-16 (λ/Å)² (g_u/g_l) A s`: the factor of the NIST compilations
     /// (Wiese & Fuhr 2009, J. Phys. Chem. Ref. Data 38, 565, their conversion table), from memory.
     pub fn oscillator_strength(&self) -> f64 {
-        1.4992e-16 * (10.0 * self.wavelength_vac_nm).powi(2) * self.g_upper / self.g_lower * self.a_ki_per_s
+        1.4992e-16 * (10.0 * self.wavelength_vac_nm).powi(2) * self.g_upper / self.g_lower
+            * self.a_ki_per_s
     }
 
     /// Column in cm⁻² of the lower level that gives a central optical depth in a purely Gaussian profile:
@@ -66,7 +67,12 @@ pub struct Species {
 impl Species {
     /// A species whose partition function is 2 at any temperature, so that columns are easy to reason about.
     pub fn simple(lines: Vec<Line>) -> Self {
-        Species { name: "Xx I", mass_u: 40.0, lines, levels: vec![(2.0, 0.0)] }
+        Species {
+            name: "Xx I",
+            mass_u: 40.0,
+            lines,
+            levels: vec![(2.0, 0.0)],
+        }
     }
 
     /// Writes line list and levels into the folder; gives the `[[species]]` table of a setup.
@@ -76,8 +82,19 @@ impl Species {
         let mut text = String::from("wavelength_vac_nm,a_ki_per_s,e_lower_per_cm,g_lower,g_upper");
         text.push_str(if with_gamma { ",gamma_per_s\n" } else { "\n" });
         for line in &self.lines {
-            let Line { wavelength_vac_nm, a_ki_per_s, e_lower_per_cm, g_lower, g_upper, gamma_per_s } = line;
-            write!(text, "{wavelength_vac_nm},{a_ki_per_s},{e_lower_per_cm},{g_lower},{g_upper}").unwrap();
+            let Line {
+                wavelength_vac_nm,
+                a_ki_per_s,
+                e_lower_per_cm,
+                g_lower,
+                g_upper,
+                gamma_per_s,
+            } = line;
+            write!(
+                text,
+                "{wavelength_vac_nm},{a_ki_per_s},{e_lower_per_cm},{g_lower},{g_upper}"
+            )
+            .unwrap();
             match gamma_per_s {
                 Some(gamma) if with_gamma => writeln!(text, ",{gamma}").unwrap(),
                 _ => text.push('\n'),
@@ -107,7 +124,13 @@ pub struct Case {
 
 impl Case {
     /// Writes a case into `folder/name/`: the sections of the setup as given, the species added to them.
-    pub fn write(folder: &Path, name: &str, sections: &str, species: &[Species], wavelength_nm: Vec<f64>) -> Case {
+    pub fn write(
+        folder: &Path,
+        name: &str,
+        sections: &str,
+        species: &[Species],
+        wavelength_nm: Vec<f64>,
+    ) -> Case {
         let folder = folder.join(name);
         fs::create_dir_all(&folder).unwrap();
         let mut text = sections.to_owned();
@@ -116,11 +139,16 @@ impl Case {
         }
         let setup = folder.join("setup.toml");
         fs::write(&setup, text).unwrap();
-        Case { setup, wavelength_nm }
+        Case {
+            setup,
+            wavelength_nm,
+        }
     }
 }
 
 /// `count` channel centres from one wavelength to another, both included.
 pub fn channels(from_nm: f64, to_nm: f64, count: usize) -> Vec<f64> {
-    (0..count).map(|k| from_nm + (to_nm - from_nm) * k as f64 / (count - 1) as f64).collect()
+    (0..count)
+        .map(|k| from_nm + (to_nm - from_nm) * k as f64 / (count - 1) as f64)
+        .collect()
 }

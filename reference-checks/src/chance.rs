@@ -11,7 +11,9 @@ pub struct Chance {
 impl Chance {
     /// A stream of its own for each seed.
     pub fn new(seed: u64) -> Self {
-        Chance { state: seed.wrapping_mul(0x9E37_79B9_7F4A_7C15) }
+        Chance {
+            state: seed.wrapping_mul(0x9E37_79B9_7F4A_7C15),
+        }
     }
 
     fn next(&mut self) -> u64 {

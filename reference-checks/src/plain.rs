@@ -18,7 +18,10 @@ impl Case {
         let axis = SpectralAxis::from_centres_m(&centres_m, Medium::Vacuum).unwrap();
         let (sightline, parameters) = sightline(&setup, &axis);
         // From per metre to per nanometre.
-        oracle::observed(&sightline, &parameters).iter().map(|radiance| radiance * 1e-9).collect()
+        oracle::observed(&sightline, &parameters)
+            .iter()
+            .map(|radiance| radiance * 1e-9)
+            .collect()
     }
 }
 
@@ -31,13 +34,19 @@ fn known(value: Value) -> f64 {
 
 /// Setup to sightline and parameters, value by value.
 fn sightline(setup: &Setup, axis: &SpectralAxis) -> (Sightline, Vec<f64>) {
-    let columns = setup.resolve_columns(Catalogue::builtin()).unwrap_or_else(|error| panic!("{error}"));
+    let columns = setup
+        .resolve_columns(Catalogue::builtin())
+        .unwrap_or_else(|error| panic!("{error}"));
     let sightline = Sightline {
         channels: Channels::new(axis.edges_vac_m(), &vec![true; axis.len()]),
         line_spread: match setup.instrument {
             Instrument::None => LineSpread::None,
-            Instrument::FwhmNm(fwhm_nm) => LineSpread::Fwhm { fwhm_m: fwhm_nm * 1e-9 },
-            Instrument::ResolvingPower(resolving_power) => LineSpread::ResolvingPower { resolving_power },
+            Instrument::FwhmNm(fwhm_nm) => LineSpread::Fwhm {
+                fwhm_m: fwhm_nm * 1e-9,
+            },
+            Instrument::ResolvingPower(resolving_power) => {
+                LineSpread::ResolvingPower { resolving_power }
+            }
         },
         background: match setup.background.light {
             Light::Blackbody => Background::Blackbody { shape_terms: 0 },

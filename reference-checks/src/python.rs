@@ -18,6 +18,10 @@ pub fn run(script: &str, arguments: &[&Path]) -> Option<String> {
         .env("OPENBLAS_NUM_THREADS", "1")
         .output()
         .unwrap_or_else(|error| panic!("{}: {error}", python.display()));
-    assert!(output.status.success(), "{script}: {}", String::from_utf8_lossy(&output.stderr));
+    assert!(
+        output.status.success(),
+        "{script}: {}",
+        String::from_utf8_lossy(&output.stderr)
+    );
     Some(String::from_utf8_lossy(&output.stdout).into_owned())
 }

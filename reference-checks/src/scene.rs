@@ -48,14 +48,23 @@ impl Scene {
             "[instrument]\nfwhm_nm = {:?}\n[background]\nlight = \"blackbody\"\ntemperature_K = {}\ndilution = {}\n\
              [[cloud]]\ntemperature_K = {}\nvelocity_km_s = {}\nturbulence_km_s = {}\n[cloud.column_cm2]\n",
             self.fwhm_nm,
-            entry("background_temperature", self.background_k, (1000.0, 30_000.0)),
+            entry(
+                "background_temperature",
+                self.background_k,
+                (1000.0, 30_000.0)
+            ),
             entry("dilution", self.dilution, (0.01, 1.0)),
             entry("temperature", self.gas_k, (300.0, 30_000.0)),
             entry("velocity", self.velocity_km_s, (-400.0, 400.0)),
             entry("turbulence", self.turbulence_km_s, (0.1, 50.0)),
         );
         for (name, column) in &self.columns_cm2 {
-            writeln!(text, "\"{name}\" = {}", entry("column", *column, (1e6, 1e22))).expect("a string takes all");
+            writeln!(
+                text,
+                "\"{name}\" = {}",
+                entry("column", *column, (1e6, 1e22))
+            )
+            .expect("a string takes all");
         }
         text
     }
@@ -73,9 +82,13 @@ impl Scene {
             "cloud1_turbulence" => self.turbulence_km_s,
             _ => {
                 let column = self.columns_cm2.iter().find(|(species, _)| {
-                    name.strip_prefix("cloud1_log10_column_") == Some(species.replace(' ', "_").as_str())
+                    name.strip_prefix("cloud1_log10_column_")
+                        == Some(species.replace(' ', "_").as_str())
                 });
-                column.unwrap_or_else(|| panic!("no quantity {name}")).1.log10()
+                column
+                    .unwrap_or_else(|| panic!("no quantity {name}"))
+                    .1
+                    .log10()
             }
         }
     }
@@ -94,7 +107,8 @@ impl Scene {
             "cloud1_turbulence" => scene.turbulence_km_s = value,
             _ => {
                 let column = scene.columns_cm2.iter_mut().find(|(species, _)| {
-                    name.strip_prefix("cloud1_log10_column_") == Some(species.replace(' ', "_").as_str())
+                    name.strip_prefix("cloud1_log10_column_")
+                        == Some(species.replace(' ', "_").as_str())
                 });
                 column.unwrap_or_else(|| panic!("no quantity {name}")).1 = 10.0_f64.powf(value);
             }
@@ -103,9 +117,21 @@ impl Scene {
     }
 
     /// Writes truth and question into `folder/name-truth` and `folder/name-question`.
-    pub fn write(&self, folder: &Path, name: &str, species: &[Species], wavelength_nm: &[f64]) -> (Case, Case) {
+    pub fn write(
+        &self,
+        folder: &Path,
+        name: &str,
+        species: &[Species],
+        wavelength_nm: &[f64],
+    ) -> (Case, Case) {
         let one = |kind: &str, text: String| {
-            Case::write(folder, &format!("{name}-{kind}"), &text, species, wavelength_nm.to_vec())
+            Case::write(
+                folder,
+                &format!("{name}-{kind}"),
+                &text,
+                species,
+                wavelength_nm.to_vec(),
+            )
         };
         (one("truth", self.truth()), one("question", self.question()))
     }

@@ -37,8 +37,12 @@ fn widths_and_depths(folder: &Path) -> Vec<Case> {
         for depth in [0.01, 1.0, 100.0, 1e4] {
             for gamma_per_s in [1e5, 1e9] {
                 let fwhm_km_s = B_KM_S / width;
-                let line = Line { gamma_per_s: Some(gamma_per_s), ..Line::at_nm(WAVELENGTH_NM) };
-                let reach_nm = f64::max(6.0 * fwhm_km_s, 12.0 * B_KM_S) / LIGHT_KM_S * WAVELENGTH_NM;
+                let line = Line {
+                    gamma_per_s: Some(gamma_per_s),
+                    ..Line::at_nm(WAVELENGTH_NM)
+                };
+                let reach_nm =
+                    f64::max(6.0 * fwhm_km_s, 12.0 * B_KM_S) / LIGHT_KM_S * WAVELENGTH_NM;
                 cases.push(Case::write(
                     folder,
                     &format!("width-{width}-depth-{depth}-gamma-{gamma_per_s:e}"),
@@ -49,7 +53,11 @@ fn widths_and_depths(folder: &Path) -> Vec<Case> {
                     ),
                     &[Species::simple(vec![line])],
                     // Off the line's centre, so that no symmetry helps.
-                    channels(WAVELENGTH_NM - reach_nm, WAVELENGTH_NM + 1.07 * reach_nm, 81),
+                    channels(
+                        WAVELENGTH_NM - reach_nm,
+                        WAVELENGTH_NM + 1.07 * reach_nm,
+                        81,
+                    ),
                 ));
             }
         }
@@ -62,7 +70,10 @@ fn blends(folder: &Path) -> Vec<Case> {
     let mut cases = Vec::new();
     for apart_km_s in [0.5, 2.0, 6.0, 40.0] {
         for depth in [0.3, 30.0, 3000.0] {
-            let first = Line { gamma_per_s: Some(2e8), ..Line::at_nm(WAVELENGTH_NM) };
+            let first = Line {
+                gamma_per_s: Some(2e8),
+                ..Line::at_nm(WAVELENGTH_NM)
+            };
             let second = Line {
                 a_ki_per_s: 4e7,
                 e_lower_per_cm: 300.0,
@@ -72,7 +83,11 @@ fn blends(folder: &Path) -> Vec<Case> {
             cases.push(Case::write(
                 folder,
                 &format!("blend-{apart_km_s}-{depth}"),
-                &one_cloud("fwhm_nm = 0.03", 1.5, first.column_for_depth_cm2(depth, 1.8)),
+                &one_cloud(
+                    "fwhm_nm = 0.03",
+                    1.5,
+                    first.column_for_depth_cm2(depth, 1.8),
+                ),
                 &[Species::simple(vec![first, second])],
                 channels(WAVELENGTH_NM - 0.25, WAVELENGTH_NM + 0.32, 61),
             ));
@@ -87,23 +102,42 @@ fn other_setups(folder: &Path) -> Vec<Case> {
         name: "Xx I",
         mass_u: 23.0,
         lines: vec![
-            Line { gamma_per_s: None, ..Line::at_nm(500.0) },
-            Line { gamma_per_s: None, g_upper: 2.0, a_ki_per_s: 6e7, ..Line::at_nm(500.6) },
-            Line { gamma_per_s: None, e_lower_per_cm: 9000.0, a_ki_per_s: 3e7, ..Line::at_nm(499.3) },
+            Line {
+                gamma_per_s: None,
+                ..Line::at_nm(500.0)
+            },
+            Line {
+                gamma_per_s: None,
+                g_upper: 2.0,
+                a_ki_per_s: 6e7,
+                ..Line::at_nm(500.6)
+            },
+            Line {
+                gamma_per_s: None,
+                e_lower_per_cm: 9000.0,
+                a_ki_per_s: 3e7,
+                ..Line::at_nm(499.3)
+            },
         ],
         levels: vec![(2.0, 0.0), (4.0, 9000.0), (6.0, 20_000.0)],
     };
     let heavy = Species {
         name: "Yy II",
         mass_u: 137.3,
-        lines: vec![Line { gamma_per_s: Some(4e8), ..Line::at_nm(500.02) }],
+        lines: vec![Line {
+            gamma_per_s: Some(4e8),
+            ..Line::at_nm(500.02)
+        }],
         levels: vec![(2.0, 0.0), (10.0, 5000.0)],
     };
     // Far outside the channels, but so strong that its damping wing is in them.
     let distant = Species {
         name: "Zz I",
         mass_u: 9.0,
-        lines: vec![Line { gamma_per_s: Some(3e8), ..Line::at_nm(506.0) }],
+        lines: vec![Line {
+            gamma_per_s: Some(3e8),
+            ..Line::at_nm(506.0)
+        }],
         levels: vec![(2.0, 0.0)],
     };
     let cloud = |temperature_k: f64, velocity_km_s: f64, columns: &str| {
@@ -115,11 +149,26 @@ fn other_setups(folder: &Path) -> Vec<Case> {
     let blackbody = "[background]\nlight = \"blackbody\"\ntemperature_K = 4800\n";
     let both = "\"Xx I\" = 3e13\n\"Yy II\" = 2e12";
     let cases = [
-        ("absorption", format!("[instrument]\nfwhm_nm = 0.05\n{blackbody}{}", cloud(2500.0, 12.0, both))),
-        ("emission", format!("[instrument]\nfwhm_nm = 0.05\n{blackbody}{}", cloud(7000.0, -25.0, both))),
+        (
+            "absorption",
+            format!(
+                "[instrument]\nfwhm_nm = 0.05\n{blackbody}{}",
+                cloud(2500.0, 12.0, both)
+            ),
+        ),
+        (
+            "emission",
+            format!(
+                "[instrument]\nfwhm_nm = 0.05\n{blackbody}{}",
+                cloud(7000.0, -25.0, both)
+            ),
+        ),
         (
             "diluted",
-            format!("[instrument]\nfwhm_nm = 0.05\n{blackbody}dilution = 0.3\n{}", cloud(4800.0, 90.0, both)),
+            format!(
+                "[instrument]\nfwhm_nm = 0.05\n{blackbody}dilution = 0.3\n{}",
+                cloud(4800.0, 90.0, both)
+            ),
         ),
         (
             "two-clouds",
@@ -131,12 +180,21 @@ fn other_setups(folder: &Path) -> Vec<Case> {
         ),
         (
             "resolving-power",
-            format!("[instrument]\nresolving_power = 3000\n{blackbody}{}", cloud(2500.0, 150.0, both)),
+            format!(
+                "[instrument]\nresolving_power = 3000\n{blackbody}{}",
+                cloud(2500.0, 150.0, both)
+            ),
         ),
-        ("no-instrument", format!("{blackbody}{}", cloud(2500.0, 0.0, both))),
+        (
+            "no-instrument",
+            format!("{blackbody}{}", cloud(2500.0, 0.0, both)),
+        ),
         (
             "dark",
-            format!("[instrument]\nfwhm_nm = 0.05\n[background]\nlight = \"dark\"\n{}", cloud(6000.0, 0.0, both)),
+            format!(
+                "[instrument]\nfwhm_nm = 0.05\n[background]\nlight = \"dark\"\n{}",
+                cloud(6000.0, 0.0, both)
+            ),
         ),
         (
             "own-width",
@@ -148,22 +206,38 @@ fn other_setups(folder: &Path) -> Vec<Case> {
         ),
         (
             "wings-from-outside",
-            format!("[instrument]\nfwhm_nm = 0.05\n{blackbody}{}", cloud(2500.0, 0.0, "\"Zz I\" = 1e19")),
+            format!(
+                "[instrument]\nfwhm_nm = 0.05\n{blackbody}{}",
+                cloud(2500.0, 0.0, "\"Zz I\" = 1e19")
+            ),
         ),
         (
             "fast",
-            format!("[instrument]\nfwhm_nm = 0.05\n{blackbody}{}", cloud(2500.0, -420.0, both)),
+            format!(
+                "[instrument]\nfwhm_nm = 0.05\n{blackbody}{}",
+                cloud(2500.0, -420.0, both)
+            ),
         ),
     ];
     let species = [rich, heavy, distant];
     let mut cases: Vec<Case> = cases
         .iter()
-        .map(|(name, setup)| Case::write(folder, name, setup, &species, channels(498.9, 500.9, 101)))
+        .map(|(name, setup)| {
+            Case::write(folder, name, setup, &species, channels(498.9, 500.9, 101))
+        })
         .collect();
     // Channels wider than the line-spread function and of unequal width.
-    let mut uneven: Vec<f64> = (0..60).map(|k| 498.9 + 2.0 * (f64::from(k) / 59.0).powf(1.4)).collect();
+    let mut uneven: Vec<f64> = (0..60)
+        .map(|k| 498.9 + 2.0 * (f64::from(k) / 59.0).powf(1.4))
+        .collect();
     uneven.dedup();
-    cases.push(Case::write(folder, "uneven", &cases_text(&cases[0]), &species, uneven));
+    cases.push(Case::write(
+        folder,
+        "uneven",
+        &cases_text(&cases[0]),
+        &species,
+        uneven,
+    ));
     cases
 }
 
@@ -176,15 +250,28 @@ fn cases_text(case: &Case) -> String {
 /// Largest difference to the brute-force model, relative to the largest contrast.
 fn difference(predicted: &[f64], answer: &Value) -> f64 {
     let numbers = |key: &str| -> Vec<f64> {
-        answer[key].as_array().unwrap().iter().map(|number| number.as_f64().unwrap()).collect()
+        answer[key]
+            .as_array()
+            .unwrap()
+            .iter()
+            .map(|number| number.as_f64().unwrap())
+            .collect()
     };
     let (intensity, continuum) = (numbers("intensity"), numbers("continuum"));
     assert_eq!(predicted.len(), intensity.len());
-    let largest = intensity.iter().zip(&continuum).map(|(i, c)| (i - c).abs()).fold(0.0, f64::max);
+    let largest = intensity
+        .iter()
+        .zip(&continuum)
+        .map(|(i, c)| (i - c).abs())
+        .fold(0.0, f64::max);
     assert!(largest > 0.0);
     // A NaN must not slip through `max`.
     assert!(predicted.iter().all(|value| value.is_finite()));
-    predicted.iter().zip(&intensity).map(|(p, i)| (p - i).abs() / largest).fold(0.0, f64::max)
+    predicted
+        .iter()
+        .zip(&intensity)
+        .map(|(p, i)| (p - i).abs() / largest)
+        .fold(0.0, f64::max)
 }
 
 fn compare(subject: &str, make: fn(&Path) -> Vec<Case>) {
@@ -200,15 +287,27 @@ fn compare(subject: &str, make: fn(&Path) -> Vec<Case>) {
         return;
     }
     let answers: Vec<Value> = serde_json::from_str(&fs::read_to_string(&answers).unwrap()).unwrap();
-    let models: [(&str, f64, fn(&Case) -> Vec<f64>); 2] =
-        [("plain model", ALLOWED_PLAIN, Case::observe_plainly), ("program", ALLOWED, Case::predict)];
+    let models: [(&str, f64, fn(&Case) -> Vec<f64>); 2] = [
+        ("plain model", ALLOWED_PLAIN, Case::observe_plainly),
+        ("program", ALLOWED, Case::predict),
+    ];
     for (model, allowed, spectrum) in models {
         let mut worst = (0.0, String::new());
         let mut failed = Vec::new();
         for (case, answer) in cases.iter().zip(&answers) {
-            let name = case.setup.parent().unwrap().file_name().unwrap().to_string_lossy().into_owned();
+            let name = case
+                .setup
+                .parent()
+                .unwrap()
+                .file_name()
+                .unwrap()
+                .to_string_lossy()
+                .into_owned();
             let refinement = answer["refinement"].as_f64().unwrap();
-            assert!(refinement < ALLOWED_REFINEMENT, "{name}: brute force is unsure by {refinement:.1e}");
+            assert!(
+                refinement < ALLOWED_REFINEMENT,
+                "{name}: brute force is unsure by {refinement:.1e}"
+            );
             let difference = difference(&spectrum(case), answer);
             if difference > allowed {
                 failed.push(format!("{name}: {difference:.1e}"));
@@ -217,7 +316,12 @@ fn compare(subject: &str, make: fn(&Path) -> Vec<Case>) {
                 worst = (difference, name);
             }
         }
-        println!("{subject}, {model}: {} cases, worst {:.1e} ({})", cases.len(), worst.0, worst.1);
+        println!(
+            "{subject}, {model}: {} cases, worst {:.1e} ({})",
+            cases.len(),
+            worst.0,
+            worst.1
+        );
         assert!(
             failed.is_empty(),
             "{model} differs by more than {allowed:e} of the deepest line:\n{}",

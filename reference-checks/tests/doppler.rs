@@ -13,8 +13,12 @@ fn thermal_widths_follow_the_formula_of_common_practice() {
     for mass_u in [1.008_f64, 4.0026, 22.990, 39.948, 137.33] {
         for temperature_k in [80.0_f64, 1e3, 1e4, 1e5] {
             let published_km_s = 12.9 * (temperature_k / 1e4 / mass_u).sqrt();
-            let b_km_s = doppler_width_squared(temperature_k, mass_u * ATOMIC_MASS_KG, 0.0).sqrt() * 1e-3;
-            assert!((b_km_s / published_km_s - 1.0).abs() < ALLOWED, "{mass_u} u at {temperature_k} K: {b_km_s}");
+            let b_km_s =
+                doppler_width_squared(temperature_k, mass_u * ATOMIC_MASS_KG, 0.0).sqrt() * 1e-3;
+            assert!(
+                (b_km_s / published_km_s - 1.0).abs() < ALLOWED,
+                "{mass_u} u at {temperature_k} K: {b_km_s}"
+            );
         }
     }
 }

@@ -47,17 +47,32 @@ fn check(name: &str, scene: &Scene, seed: u64) {
     let noise = exact.iter().copied().fold(0.0, f64::max) / SIGNAL_TO_NOISE;
 
     let problem = question.problem();
-    let names: Vec<String> = problem.quantities().iter().map(|quantity| quantity.name.clone()).collect();
+    let names: Vec<String> = problem
+        .quantities()
+        .iter()
+        .map(|quantity| quantity.name.clone())
+        .collect();
     let derivatives: Vec<Vec<f64>> = names
         .iter()
         .map(|quantity| {
             let middle = scene.true_value(quantity);
-            let step = if quantity.contains("log10") { 1e-4 } else { 1e-4 * middle.abs().max(1.0) };
+            let step = if quantity.contains("log10") {
+                1e-4
+            } else {
+                1e-4 * middle.abs().max(1.0)
+            };
             let at = |value: f64| {
                 let changed = scene.with(quantity, value);
-                changed.write(&folder, &format!("{name}-step"), &species, &wavelength_nm).0.observe_plainly()
+                changed
+                    .write(&folder, &format!("{name}-step"), &species, &wavelength_nm)
+                    .0
+                    .observe_plainly()
             };
-            at(middle + step).iter().zip(at(middle - step)).map(|(up, down)| (up - down) / (2.0 * step)).collect()
+            at(middle + step)
+                .iter()
+                .zip(at(middle - step))
+                .map(|(up, down)| (up - down) / (2.0 * step))
+                .collect()
         })
         .collect();
     let bound = cramer_rao(&derivatives, noise);
@@ -68,31 +83,67 @@ fn check(name: &str, scene: &Scene, seed: u64) {
     let mut workspace = problem.workspace();
     let mut fits = Vec::with_capacity(DRAWS);
     for _ in 0..DRAWS {
-        let intensity: Vec<f64> = exact.iter().map(|value| value + noise * chance.normal()).collect();
-        let data = Observation { intensity: &intensity, uncertainty: Some(&uncertainty), mask: &mask };
+        let intensity: Vec<f64> = exact
+            .iter()
+            .map(|value| value + noise * chance.normal())
+            .collect();
+        let data = Observation {
+            intensity: &intensity,
+            uncertainty: Some(&uncertainty),
+            mask: &mask,
+        };
         fits.push(problem.fit(&mut workspace, &data, None));
     }
-    let flagged = fits.iter().filter(|fit| !fit.flags.names().is_empty()).count();
+    let flagged = fits
+        .iter()
+        .filter(|fit| !fit.flags.names().is_empty())
+        .count();
     println!("{name}: {flagged} of {DRAWS} flagged");
-    assert!(flagged <= DRAWS / 50, "{name}: {flagged} of {DRAWS} good spectra are flagged (allowed: 2 %)");
+    assert!(
+        flagged <= DRAWS / 50,
+        "{name}: {flagged} of {DRAWS} good spectra are flagged (allowed: 2 %)"
+    );
 
     let chi2 = fits.iter().map(|fit| fit.chi2_reduced).sum::<f64>() / DRAWS as f64;
-    assert!((chi2 - 1.0).abs() < 0.02, "{name}: mean reduced chi-square {chi2}");
+    assert!(
+        (chi2 - 1.0).abs() < 0.02,
+        "{name}: mean reduced chi-square {chi2}"
+    );
     for (k, quantity) in names.iter().enumerate() {
         let true_value = scene.true_value(quantity);
         let errors: Vec<f64> = fits.iter().map(|fit| fit.values[k] - true_value).collect();
         let bias = errors.iter().sum::<f64>() / DRAWS as f64;
-        let scatter = (errors.iter().map(|error| (error - bias).powi(2)).sum::<f64>() / (DRAWS - 1) as f64).sqrt();
-        let covered =
-            fits.iter().zip(&errors).filter(|(fit, error)| error.abs() <= fit.sigma[k]).count() as f64 / DRAWS as f64;
+        let scatter = (errors
+            .iter()
+            .map(|error| (error - bias).powi(2))
+            .sum::<f64>()
+            / (DRAWS - 1) as f64)
+            .sqrt();
+        let covered = fits
+            .iter()
+            .zip(&errors)
+            .filter(|(fit, error)| error.abs() <= fit.sigma[k])
+            .count() as f64
+            / DRAWS as f64;
         println!(
             "{name}, {quantity}: scatter/bound {:.3}, bias {:+.3} sigma, 68 % intervals cover {covered:.3}",
             scatter / bound[k],
             bias / bound[k]
         );
-        assert!((scatter / bound[k] - 1.0).abs() <= 0.10, "{name}, {quantity}: {}", scatter / bound[k]);
-        assert!(bias.abs() <= 0.15 * bound[k], "{name}, {quantity}: bias {} sigma", bias / bound[k]);
-        assert!((0.65..=0.72).contains(&covered), "{name}, {quantity}: intervals cover {covered}");
+        assert!(
+            (scatter / bound[k] - 1.0).abs() <= 0.10,
+            "{name}, {quantity}: {}",
+            scatter / bound[k]
+        );
+        assert!(
+            bias.abs() <= 0.15 * bound[k],
+            "{name}, {quantity}: bias {} sigma",
+            bias / bound[k]
+        );
+        assert!(
+            (0.65..=0.72).contains(&covered),
+            "{name}, {quantity}: intervals cover {covered}"
+        );
     }
 }
 
@@ -105,7 +156,12 @@ fn scene(gas_k: f64, background_k: f64, column_cm2: f64) -> Scene {
         velocity_km_s: 23.0,
         turbulence_km_s: 6.0,
         columns_cm2: vec![("Xx I", column_cm2)],
-        find: vec!["temperature", "velocity", "column", "background_temperature"],
+        find: vec![
+            "temperature",
+            "velocity",
+            "column",
+            "background_temperature",
+        ],
     }
 }
 

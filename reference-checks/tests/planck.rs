@@ -12,7 +12,11 @@ fn peak_m(temperature_k: f64) -> f64 {
     let (mut low, mut high) = (1e-4 / temperature_k, 1.0 / temperature_k);
     for _ in 0..200 {
         let middle = (low * high).sqrt();
-        if rises(middle) { low = middle } else { high = middle }
+        if rises(middle) {
+            low = middle
+        } else {
+            high = middle
+        }
     }
     (low * high).sqrt()
 }
@@ -24,7 +28,10 @@ fn the_peak_follows_wiens_displacement_law() {
     const ALLOWED: f64 = 3e-8;
     for temperature_k in [3.0, 300.0, 2856.0, 5772.0, 60_000.0] {
         let product = peak_m(temperature_k) * temperature_k;
-        assert!((product / 2.897_771_955e-3 - 1.0).abs() < ALLOWED, "{temperature_k} K: {product} m K");
+        assert!(
+            (product / 2.897_771_955e-3 - 1.0).abs() < ALLOWED,
+            "{temperature_k} K: {product} m K"
+        );
     }
 }
 
@@ -51,7 +58,10 @@ fn all_of_it_together_is_the_stefan_boltzmann_law() {
             .map(|wavelength_m| radiance(wavelength_m, temperature_k) * wavelength_m * STEP)
             .sum();
         let constant = std::f64::consts::PI * integral / temperature_k.powi(4);
-        assert!((constant / 5.670_374_419e-8 - 1.0).abs() < 1e-9, "{temperature_k} K: {constant}");
+        assert!(
+            (constant / 5.670_374_419e-8 - 1.0).abs() < 1e-9,
+            "{temperature_k} K: {constant}"
+        );
     }
 }
 
@@ -76,7 +86,10 @@ fn cie_standard_illuminant_a_is_a_planck_radiator() {
     let at_560 = radiance(560e-9, temperature_k);
     for (wavelength_nm, published) in PUBLISHED {
         let power = 100.0 * radiance(wavelength_nm * 1e-9, temperature_k) / at_560;
-        assert!((power / published - 1.0).abs() < ALLOWED, "{wavelength_nm} nm: {power}, not {published}");
+        assert!(
+            (power / published - 1.0).abs() < ALLOWED,
+            "{wavelength_nm} nm: {power}, not {published}"
+        );
     }
 }
 
@@ -93,6 +106,7 @@ fn both_ends_are_the_laws_of_rayleigh_jeans_and_wien() {
     assert!((ratio - (1.0 - x / 2.0)).abs() < 1e-7, "{ratio}");
 
     let (wavelength_m, temperature_k) = (200e-9_f64, 1000.0);
-    let wien = 2.0 * h * c * c / wavelength_m.powi(5) * (-h * c / (wavelength_m * k * temperature_k)).exp();
+    let wien = 2.0 * h * c * c / wavelength_m.powi(5)
+        * (-h * c / (wavelength_m * k * temperature_k)).exp();
     assert!((radiance(wavelength_m, temperature_k) / wien - 1.0).abs() < 1e-13);
 }

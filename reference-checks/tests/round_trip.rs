@@ -36,27 +36,52 @@ fn species(chance: &mut Chance, temperature_k: f64) -> Species {
             }
         })
         .collect();
-    let levels = energies[..count].iter().map(|&energy| (3.0, energy)).chain([(9.0, 24_000.0)]).collect();
-    Species { name: "Xx I", mass_u: chance.between(7.0, 140.0), lines, levels }
+    let levels = energies[..count]
+        .iter()
+        .map(|&energy| (3.0, energy))
+        .chain([(9.0, 24_000.0)])
+        .collect();
+    Species {
+        name: "Xx I",
+        mass_u: chance.between(7.0, 140.0),
+        lines,
+        levels,
+    }
 }
 
 /// A scene in absorption or in emission whose strongest line has a central depth from 0.3 to 50.
 fn scene(chance: &mut Chance, emission: bool) -> (Scene, Species) {
     let background_k = chance.between(3500.0, 7000.0);
-    let gas_k = background_k * if emission { chance.between(1.2, 1.8) } else { chance.between(0.35, 0.8) };
+    let gas_k = background_k
+        * if emission {
+            chance.between(1.2, 1.8)
+        } else {
+            chance.between(0.35, 0.8)
+        };
     let species = species(chance, gas_k);
     let turbulence_km_s = chance.between(1.0, 8.0);
     let thermal_km_s = (2.0 * 8.314_462_618 * gas_k / (species.mass_u * 1e-3)).sqrt() * 1e-3;
     let b_km_s = turbulence_km_s.hypot(thermal_km_s);
     let weight = |energy: f64| 3.0 * (-energy * HC_OVER_K_CM_K / gas_k).exp();
-    let partition: f64 = species.levels.iter().map(|&(g, e)| g * (-e * HC_OVER_K_CM_K / gas_k).exp()).sum();
+    let partition: f64 = species
+        .levels
+        .iter()
+        .map(|&(g, e)| g * (-e * HC_OVER_K_CM_K / gas_k).exp())
+        .sum();
     // The column with which the strongest line has a depth of 1.
     let unit_cm2 = species
         .lines
         .iter()
-        .map(|line| line.column_for_depth_cm2(1.0, b_km_s) * partition / weight(line.e_lower_per_cm))
+        .map(|line| {
+            line.column_for_depth_cm2(1.0, b_km_s) * partition / weight(line.e_lower_per_cm)
+        })
         .fold(f64::INFINITY, f64::min);
-    let mut find = vec!["temperature", "velocity", "column", "background_temperature"];
+    let mut find = vec![
+        "temperature",
+        "velocity",
+        "column",
+        "background_temperature",
+    ];
     let fwhm_nm = chance.between_in_log(0.08, 0.3);
     if chance.unit() < 0.3 {
         find.push("turbulence");
@@ -64,7 +89,11 @@ fn scene(chance: &mut Chance, emission: bool) -> (Scene, Species) {
     let scene = Scene {
         fwhm_nm,
         background_k,
-        dilution: if chance.unit() < 0.5 { 1.0 } else { chance.between(0.7, 1.0) },
+        dilution: if chance.unit() < 0.5 {
+            1.0
+        } else {
+            chance.between(0.7, 1.0)
+        },
         gas_k,
         velocity_km_s: chance.between(5.0, 150.0) * if chance.unit() < 0.5 { -1.0 } else { 1.0 },
         turbulence_km_s,
@@ -83,7 +112,8 @@ fn every_value_comes_back_without_a_start() {
     let mut failed = Vec::new();
     for number in 0..SETUPS {
         let (scene, species) = scene(&mut chance, number % 2 == 1);
-        let (truth, question) = scene.write(&folder, &number.to_string(), &[species], &wavelength_nm);
+        let (truth, question) =
+            scene.write(&folder, &number.to_string(), &[species], &wavelength_nm);
         let intensity = truth.predict();
         let uncertainty: Vec<f64> = intensity.iter().map(|value| value * 1e-3).collect();
         let problem = question.problem();
@@ -106,14 +136,26 @@ fn every_value_comes_back_without_a_start() {
                 value / true_value - 1.0
             };
             text += &format!(" {} {true_value:.6} -> {value:.6};", quantity.name);
-            largest = if error.is_nan() { f64::INFINITY } else { largest.max(error.abs()) };
+            largest = if error.is_nan() {
+                f64::INFINITY
+            } else {
+                largest.max(error.abs())
+            };
         }
         worst = worst.max(largest);
         if largest > ALLOWED {
             let flags = fit.flags.names().join(" ");
-            failed.push(format!("setup {number}: {largest:.1e}, flags [{flags}], {:?};{text}", fit.stop));
+            failed.push(format!(
+                "setup {number}: {largest:.1e}, flags [{flags}], {:?};{text}",
+                fit.stop
+            ));
         }
     }
     println!("{SETUPS} round trips, worst relative error {worst:.1e}");
-    assert!(failed.is_empty(), "{} of {SETUPS} do not come back:\n{}", failed.len(), failed.join("\n"));
+    assert!(
+        failed.is_empty(),
+        "{} of {SETUPS} do not come back:\n{}",
+        failed.len(),
+        failed.join("\n")
+    );
 }
