@@ -261,18 +261,27 @@ impl Archive {
 }
 
 /// The strings of an attribute; `None` if it holds something else.
+///
+/// The bytes are taken and not the text, because a file may say UTF-8 and hold anything.
 pub fn strings(value: &Container) -> hdf5::Result<Option<Vec<String>>> {
-    fn owned<T: ToString>(items: Vec<T>) -> Option<Vec<String>> {
-        Some(items.iter().map(T::to_string).collect())
+    fn texts<T>(items: Vec<T>, bytes: impl Fn(&T) -> &[u8]) -> Option<Vec<String>> {
+        let text = |item| String::from_utf8_lossy(bytes(item)).into_owned();
+        Some(items.iter().map(text).collect())
     }
+    type Unicode = FixedUnicode<LONGEST_FIXED_STRING>;
+    type Ascii = FixedAscii<LONGEST_FIXED_STRING>;
     Ok(match value.dtype()?.to_descriptor()? {
-        TypeDescriptor::VarLenUnicode => owned(value.read_raw::<VarLenUnicode>()?),
-        TypeDescriptor::VarLenAscii => owned(value.read_raw::<VarLenAscii>()?),
+        TypeDescriptor::VarLenUnicode => {
+            texts(value.read_raw::<VarLenUnicode>()?, VarLenUnicode::as_bytes)
+        }
+        TypeDescriptor::VarLenAscii => {
+            texts(value.read_raw::<VarLenAscii>()?, VarLenAscii::as_bytes)
+        }
         TypeDescriptor::FixedUnicode(n) if n <= LONGEST_FIXED_STRING => {
-            owned(value.read_raw::<FixedUnicode<LONGEST_FIXED_STRING>>()?)
+            texts(value.read_raw::<Unicode>()?, Unicode::as_bytes)
         }
         TypeDescriptor::FixedAscii(n) if n <= LONGEST_FIXED_STRING => {
-            owned(value.read_raw::<FixedAscii<LONGEST_FIXED_STRING>>()?)
+            texts(value.read_raw::<Ascii>()?, Ascii::as_bytes)
         }
         _ => None,
     })

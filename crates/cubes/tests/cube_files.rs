@@ -497,3 +497,27 @@ fn readers_may_be_shared_between_threads() {
     movable::<backlit_cubes::MapsWriter>();
     movable::<CubeWriter>();
 }
+
+#[test]
+fn an_attribute_that_is_no_valid_text_is_refused_and_not_trusted() {
+    let (_dir, path) = place();
+    foreign(&path, |file| {
+        let wavelength = file.dataset("wavelength").unwrap();
+        wavelength.delete_attr("medium").unwrap();
+        // UTF-8 by its type, not by its bytes, as old programs with Latin-1 text leave it.
+        let value: hdf5::types::FixedUnicode<4> = "air".parse().unwrap();
+        wavelength
+            .new_attr::<hdf5::types::FixedUnicode<4>>()
+            .create("medium")
+            .unwrap()
+            .write_scalar(&value)
+            .unwrap();
+    });
+    assert_eq!(Cube::open(&path).unwrap().medium, Some(Medium::Air));
+    let mut bytes = fs::read(&path).unwrap();
+    let at = bytes.windows(4).position(|w| w == b"air\0").unwrap();
+    bytes[at] = 0xe9;
+    fs::write(&path, &bytes).unwrap();
+    let message = Cube::open(&path).unwrap_err().to_string();
+    assert!(message.contains("medium `\u{fffd}ir`"), "{message}");
+}
