@@ -10,7 +10,7 @@ use clap::{Parser, Subcommand};
     name = "backlit",
     version,
     arg_required_else_help = true,
-    max_term_width = 100
+    max_term_width = 80
 )]
 pub struct Arguments {
     /// One JSON document on standard output

@@ -58,7 +58,7 @@ pub fn centres_m(
     };
     let step_nm = step_nm.unwrap_or(width_nm / (channels - 1.0));
     Ok((0..channels as usize)
-        .map(|i| (range.low_nm + i as f64 * step_nm) * 1e-9)
+        .map(|i| (range.low_nm + i as f64 * step_nm) / 1e9)
         .collect())
 }
 

@@ -48,19 +48,27 @@ pub struct Predict {
     #[arg(long, value_name = "SPECTRUM", conflicts_with_all = ["range", "step"])]
     like: Option<PathBuf>,
 
-    /// From..to in nm [default: use_nm, or around the lines]
+    /// From..to in nm [default: use_nm or the lines]
+    ///
+    /// In the setup's medium. By default the hull of `use_nm`, or else the strongest lines with 2 % on each side.
+    /// Example: 588..591
     #[arg(long, value_name = "NM..NM", allow_hyphen_values = true)]
     range: Option<RangeNm>,
 
-    /// Channel spacing in nm [default: FWHM/4, at least 2000 channels]
+    /// Channel spacing [default: FWHM/4, at most 1/2000]
+    ///
+    /// In nm. By default a quarter of the instrument's FWHM, and not fewer than 2000 channels.
     #[arg(long, value_name = "NM", value_parser = positive)]
     step: Option<f64>,
 
-    /// Add Gaussian noise: the background's peak over 1 sigma
+    /// Add Gaussian noise of this ratio to the peak
+    ///
+    /// 1 sigma is the highest intensity of the background divided by this; a column `uncertainty` (in a cube the
+    /// dataset) says so. Example: 50
     #[arg(long, value_name = "S/N", value_parser = positive)]
     noise: Option<f64>,
 
-    /// Seed of the noise; the same seed gives the same noise
+    /// The same seed gives the same noise
     #[arg(long, value_name = "S", default_value_t = 1, requires = "noise")]
     seed: u64,
 
