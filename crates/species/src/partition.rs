@@ -85,6 +85,8 @@ mod tests {
         });
         let (a, b) = (sum(&two_levels(), 20.0), sum(&shifted, 20.0));
         assert!((a.ln_q - b.ln_q - 5e4 / 20.0).abs() < 1e-9);
+        // d/dT of -E0/kT is E0/kT^2.
+        assert!((b.dlnq_dt_per_k - a.dlnq_dt_per_k - 5e4 / 400.0).abs() < 1e-9);
     }
 
     #[test]

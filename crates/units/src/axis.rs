@@ -19,6 +19,14 @@ impl SpectralAxis {
     ///
     /// Errors: fewer than two channels, a centre that is not finite or not positive, an order that is not strictly
     /// monotonic (index and both values given), a first channel that would reach below zero.
+    ///
+    /// ```
+    /// use backlit_units::{Medium, SpectralAxis};
+    /// let axis = SpectralAxis::from_centres_m(&[590e-9, 589e-9, 588e-9], Medium::Vacuum)?;
+    /// assert!(axis.is_reversed());
+    /// assert!((axis.edges_vac_m()[0] - 587.5e-9).abs() < 1e-20);
+    /// # Ok::<(), backlit_units::UnitsError>(())
+    /// ```
     pub fn from_centres_m(centres_m: &[f64], medium: Medium) -> Result<Self, UnitsError> {
         if centres_m.len() < 2 {
             return Err(UnitsError::AxisTooShort {

@@ -13,6 +13,12 @@ const ARCSECOND_RAD: f64 = std::f64::consts::PI / 648_000.0;
 /// Products of unit symbols with whole powers, such as `W m-2 sr-1 nm-1`, `erg/s/cm^2/Angstrom`,
 /// `1e-20 erg s-1 cm-2 Angstrom-1`, `W / (m2 sr um)`. `relative`, `counts` and the like say that there is no
 /// calibration.
+///
+/// ```
+/// let unit: backlit_units::IntensityUnit = "W m-2 sr-1 nm-1".parse()?;
+/// assert!(unit.per_steradian && (unit.to_si / 1e9 - 1.0).abs() < 1e-15);
+/// # Ok::<(), backlit_units::UnitsError>(())
+/// ```
 #[derive(Debug, Clone, PartialEq)]
 pub struct IntensityUnit {
     text: String,

@@ -60,6 +60,14 @@ impl Catalogue {
     ///
     /// Blanks and case may be left out where that leaves one reading ("NaI", "na i"). Errors: an unknown name, with the
     /// nearest ones; an ambiguous one ("nii" is N II or Ni I); a table that cannot be read.
+    ///
+    /// ```
+    /// let sodium = backlit_species::Catalogue::builtin().get("Na I")?;
+    /// let doublet = sodium.lines_between(589.0e-9, 590.0e-9);
+    /// assert_eq!(doublet.len(), 2);
+    /// assert!(sodium.partition_function(300.0).ln_q < 0.694); // two states, ln 2
+    /// # Ok::<(), backlit_species::SpeciesError>(())
+    /// ```
     pub fn get(&self, name: &str) -> Result<Arc<Species>, SpeciesError> {
         self.load(self.find(name)?)
     }
