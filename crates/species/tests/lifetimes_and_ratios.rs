@@ -1,7 +1,8 @@
 //! Cross-checks of the catalogue: measured lifetimes of levels, and line ratios that theory fixes.
 //!
-//! The catalogue's figures and these come from different laboratories; both are quoted from memory unless a table is
-//! named, so that agreement means that neither was remembered wrongly.
+//! Published values here are quoted from memory. Most are independent of the catalogue's figures. Not independent, and so
+//! only a check of copying and of the arithmetic: the two lifetimes of Ca II (its A rest on them), and the ratios of O III, N II,
+//! S III and Ar III (the catalogue's A come from calculations of the same kind, chosen because they meet these ratios).
 
 #![allow(clippy::unwrap_used)]
 
