@@ -23,13 +23,13 @@ pub trait Kernel {
 pub fn dispatch<K: Kernel>(kernel: K) {
     #[cfg(target_arch = "x86_64")]
     {
-        use crate::voigt::Fused;
+        use crate::voigt::{Fused, FusedWide};
         match InstructionSet::best() {
             InstructionSet::Avx512 => {
                 if let Some(simd) = pulp::x86::V4::try_new() {
                     return simd.vectorize(
                         #[inline(always)]
-                        || kernel.run::<Fused>(),
+                        || kernel.run::<FusedWide>(),
                     );
                 }
             }

@@ -2,10 +2,16 @@
 
 use std::sync::OnceLock;
 
-use pulp::{Simd, WithSimd};
+#[cfg(target_arch = "x86_64")]
+use {
+    pulp::{Simd, WithSimd},
+    std::marker::PhantomData,
+};
 
 use super::accuracy::{Accuracy, Fast, Full};
-use super::arithmetic::{Arithmetic, Fused, Separate};
+use super::arithmetic::{Arithmetic, Separate};
+#[cfg(target_arch = "x86_64")]
+use super::arithmetic::{Fused, FusedWide};
 use super::lanes::{Damping, w_lanes};
 
 /// Points of a block: two vectors of AVX2, one of AVX-512.
@@ -107,12 +113,12 @@ fn run<A: Accuracy>(
     match set {
         InstructionSet::Avx512 => {
             if let Some(simd) = pulp::x86::V4::try_new() {
-                return Simd::vectorize(simd, blocks);
+                return Simd::vectorize(simd, Compiled(blocks, PhantomData::<FusedWide>));
             }
         }
         InstructionSet::Avx2 => {
             if let Some(simd) = pulp::x86::V3::try_new() {
-                return Simd::vectorize(simd, blocks);
+                return Simd::vectorize(simd, Compiled(blocks, PhantomData::<Fused>));
             }
         }
         InstructionSet::Portable => {}
@@ -130,13 +136,18 @@ struct Blocks<'a, A> {
     im: &'a mut [f64],
 }
 
-impl<A: Accuracy> WithSimd for Blocks<'_, A> {
+/// The same with its arithmetic.
+#[cfg(target_arch = "x86_64")]
+struct Compiled<'a, A, R>(Blocks<'a, A>, PhantomData<R>);
+
+#[cfg(target_arch = "x86_64")]
+impl<A: Accuracy, R: Arithmetic> WithSimd for Compiled<'_, A, R> {
     type Output = ();
 
-    /// Inlined by `pulp` into a function that is compiled for the instruction set; all of those used here have FMA.
+    /// Inlined by `pulp` into a function that is compiled for the instruction set.
     #[inline(always)]
     fn with_simd<S: Simd>(self, _: S) {
-        self.evaluate::<Fused>();
+        self.0.evaluate::<R>();
     }
 }
 

@@ -1,16 +1,14 @@
 //! The lane body: a block of points with one damping parameter, ready to be inlined into a larger vector kernel.
 
-use std::f64::consts::{FRAC_2_PI, LOG2_E, PI};
+use std::f64::consts::{FRAC_2_PI, FRAC_2_SQRT_PI, LOG2_E, PI};
 use std::marker::PhantomData;
 
 use super::accuracy::Accuracy;
 use super::arithmetic::Arithmetic;
 use super::elementary::{Angle, Split, power_of_two};
 use super::quadrature::{Fraction, Node, Nodes, Point};
+use super::vector::Vector;
 use super::{rules, scalar};
-
-/// `2/sqrt(pi)`.
-const TWO_OVER_SQRT_PI: f64 = std::f64::consts::FRAC_2_SQRT_PI;
 
 /// Beyond this `|z|²` the product of all denominators of a rule could overflow: the core rule, the first wing rules, the last one.
 const CORE_OVERFLOW_RADIUS_SQUARED: f64 = 1e8;
@@ -89,26 +87,19 @@ pub fn w_lanes<A: Accuracy, R: Arithmetic, const L: usize>(
     re: &mut [f64; L],
     im: &mut [f64; L],
 ) {
-    let mut radius_squared = [0.0; L];
-    for lane in 0..L {
-        radius_squared[lane] = R::mul_add(x[lane], x[lane], damping.y_squared);
-    }
-    let outside_core = all_at_least(&radius_squared, A::CORE_RADIUS_SQUARED);
-    if !outside_core && all_below(&radius_squared, CORE_OVERFLOW_RADIUS_SQUARED) {
-        if damping.amplitude == 0.0 {
-            rule::<A, R, L>(x, damping, A::between(), re, im);
-        } else {
-            for lane in 0..L {
-                (re[lane], im[lane]) = core::<A, R>(x[lane], damping);
+    let mut done = L.is_multiple_of(R::Vector::LANES);
+    if let Some(vector) = R::vector() {
+        let (re, im) = (R::Vector::vectors_mut(re), R::Vector::vectors_mut(im));
+        for ((&x, re), im) in R::Vector::vectors(x).iter().zip(re).zip(im) {
+            match w_vector(vector, x, damping) {
+                Some(value) => (*re, *im) = value,
+                None => done = false,
             }
         }
-    } else if outside_core && all_below(&radius_squared, WING_OVERFLOW_RADIUS_SQUARED) {
-        wing::<A, R, L>(x, damping, &radius_squared, re, im);
-    } else if all_at_least(&radius_squared, A::WING_RADII_SQUARED[0])
-        && all_below(&radius_squared, FAR_OVERFLOW_RADIUS_SQUARED)
-    {
-        rule::<A, R, L>(x, damping, &rules::HERMITE_2, re, im);
     } else {
+        done = false;
+    }
+    if !done {
         one_by_one(x, damping.y, re, im);
     }
 }
@@ -120,7 +111,7 @@ pub fn w_lanes<A: Accuracy, R: Arithmetic, const L: usize>(
 /// ```
 ///
 /// Accuracy: the sum cancels in the wings. With `w` at `Full`, the absolute error is below `1e-13 max(1, |z|) |w|`, and that of the real
-/// part also below `1e-12 max(1, |x|) Re w` for `y <= 1`: `slopes_keep_the_promised_accuracy`. The rounding is of no consequence in a
+/// part also below `1e-13 max(1, |x|) Re w` for `y <= 1`: `slopes_keep_the_promised_accuracy`. The rounding is of no consequence in a
 /// Jacobian; it is in the ratio `w'/w` beyond `|x| = 1e6`.
 #[inline(always)]
 pub fn slope_lanes<R: Arithmetic, const L: usize>(
@@ -131,17 +122,74 @@ pub fn slope_lanes<R: Arithmetic, const L: usize>(
     slope_re: &mut [f64; L],
     slope_im: &mut [f64; L],
 ) {
-    for lane in 0..L {
-        slope_re[lane] = -2.0 * R::mul_add(x[lane], re[lane], -(y * im[lane]));
-        slope_im[lane] = R::mul_add(
-            -2.0,
-            R::mul_add(x[lane], im[lane], y * re[lane]),
-            TWO_OVER_SQRT_PI,
+    let vector = R::vector().filter(|_| L.is_multiple_of(R::Vector::LANES));
+    let Some(v) = vector else {
+        for lane in 0..L {
+            (slope_re[lane], slope_im[lane]) = scalar::slope(x[lane], y, re[lane], im[lane]);
+        }
+        return;
+    };
+    let (minus_two, y) = (v.splat(-2.0), v.splat(y));
+    let (x, re, im) = (
+        R::Vector::vectors(x),
+        R::Vector::vectors(re),
+        R::Vector::vectors(im),
+    );
+    let slopes = R::Vector::vectors_mut(slope_re)
+        .iter_mut()
+        .zip(R::Vector::vectors_mut(slope_im));
+    for (k, (slope_re, slope_im)) in slopes.enumerate() {
+        let (x, re, im) = (x[k], re[k], im[k]);
+        *slope_re = v.mul(minus_two, v.neg_mul_add(y, im, v.mul(x, re)));
+        *slope_im = v.mul_add(
+            minus_two,
+            v.mul_add(x, im, v.mul(y, re)),
+            v.splat(FRAC_2_SQRT_PI),
         );
     }
 }
 
-/// Blocks that no rule serves as a whole, with huge or undefined points among others.
+/// The function for one vector of points, or nothing where no rule serves all of them.
+#[inline(always)]
+fn w_vector<A: Accuracy, V: Vector>(
+    v: V,
+    x: V::Value,
+    damping: &Damping<A>,
+) -> Option<(V::Value, V::Value)> {
+    let radius_squared = v.mul_add(x, x, v.splat(damping.y_squared));
+    if !v.all_at_least(radius_squared, A::CORE_RADIUS_SQUARED) {
+        return if !v.all_below(radius_squared, CORE_OVERFLOW_RADIUS_SQUARED) {
+            None
+        } else if damping.amplitude == 0.0 {
+            Some(rule(v, x, damping, A::between()))
+        } else {
+            Some(core(v, x, damping))
+        };
+    }
+    // Every rule has its own copy of the code, with its nodes as constants in it.
+    let [one, two, three, four] = A::WING_RADII_SQUARED;
+    if v.all_at_least(radius_squared, one) {
+        if v.all_below(radius_squared, FAR_OVERFLOW_RADIUS_SQUARED) {
+            Some(rule(v, x, damping, &rules::HERMITE_2))
+        } else {
+            None
+        }
+    } else if !v.all_below(radius_squared, WING_OVERFLOW_RADIUS_SQUARED)
+        || damping.y < A::GAUSSIAN_IN_WING_BELOW_Y
+    {
+        None
+    } else if v.all_at_least(radius_squared, two) {
+        Some(rule(v, x, damping, &rules::HERMITE_4))
+    } else if v.all_at_least(radius_squared, three) {
+        Some(rule(v, x, damping, &rules::HERMITE_6))
+    } else if v.all_at_least(radius_squared, four) {
+        Some(rule(v, x, damping, &rules::HERMITE_8))
+    } else {
+        Some(rule(v, x, damping, &rules::HERMITE_12))
+    }
+}
+
+/// Blocks that no rule serves as a whole: huge or undefined points among others, wings without damping.
 ///
 /// A call, so that the vector code around it need not take its lanes apart.
 #[cold]
@@ -152,43 +200,16 @@ fn one_by_one<const L: usize>(x: &[f64; L], y: f64, re: &mut [f64; L], im: &mut 
     }
 }
 
-/// What the wing rules do not know of. A call for the same reason.
-#[cold]
-#[inline(never)]
-fn add_gaussian<const L: usize>(x: &[f64; L], re: &mut [f64; L]) {
-    for lane in 0..L {
-        re[lane] += scalar::gaussian(x[lane]);
-    }
-}
-
-/// False if a value is NaN.
 #[inline(always)]
-fn all_at_least<const L: usize>(values: &[f64; L], bound: f64) -> bool {
-    let mut all = true;
-    for &value in values {
-        all &= value >= bound;
-    }
-    all
-}
-
-/// False if a value is NaN.
-#[inline(always)]
-fn all_below<const L: usize>(values: &[f64; L], bound: f64) -> bool {
-    let mut all = true;
-    for &value in values {
-        all &= value < bound;
-    }
-    all
-}
-
-#[inline(always)]
-fn point<A>(x: f64, damping: &Damping<A>) -> (f64, Point) {
-    let x_squared = x * x;
+fn point<A, V: Vector>(v: V, x: V::Value, damping: &Damping<A>) -> (V::Value, Point<V>) {
+    let x_squared = v.mul(x, x);
+    let y_squared = v.splat(damping.y_squared);
     let point = Point {
-        re_z_squared: x_squared - damping.y_squared,
-        im_z_squared_squared: x_squared * damping.four_y_squared,
+        vector: v,
+        re_z_squared: v.sub(x_squared, y_squared),
+        im_z_squared_squared: v.mul(x_squared, v.splat(damping.four_y_squared)),
     };
-    (x_squared + damping.y_squared, point)
+    (v.add(x_squared, y_squared), point)
 }
 
 /// The trapezoidal rule and the residue of the pole.
@@ -200,111 +221,94 @@ fn point<A>(x: f64, damping: &Damping<A>) -> (f64, Point) {
 /// C = 2 exp(-z²) / (1 + exp(-2 pi i f)/p) = 2 p exp(y² - x²) exp(-2 i x y) (p + exp(2 pi i f)) / |p + exp(2 pi i f)|²
 /// ```
 #[inline(always)]
-fn core<A: Accuracy, R: Arithmetic>(x: f64, damping: &Damping<A>) -> (f64, f64) {
-    let half_steps = Split::of(x * (2.0 / A::STEP));
-    let phase = Angle::of_half_turns::<A, R>(half_steps.rest);
-    let half_turns = Split::of(x * damping.half_turns_per_x);
-    let rotation = Angle::of_half_turns::<A, R>(half_turns.rest);
-    let gauss = damping.amplitude * power_of_two::<A, R>(x * x * -LOG2_E);
+fn core<A: Accuracy, V: Vector>(v: V, x: V::Value, damping: &Damping<A>) -> (V::Value, V::Value) {
+    let half_steps = Split::of(v, v.mul(x, v.splat(2.0 / A::STEP)));
+    let phase = Angle::of_half_turns::<A>(v, half_steps.rest);
+    let half_turns = Split::of(v, v.mul(x, v.splat(damping.half_turns_per_x)));
+    let rotation = Angle::of_half_turns::<A>(v, half_turns.rest);
+    let gauss = power_of_two::<A, V>(v, v.mul(v.mul(x, x), v.splat(-LOG2_E)));
     // An odd number of half turns changes the sign of the rotation.
-    let gauss = f64::from_bits(gauss.to_bits() ^ (half_turns.integer_bits << 63));
-
-    // (p + cos + i sin)(cos - i sin), and the square of the first factor.
-    let sum = (1.0 + damping.image) - phase.one_minus_cos;
-    let cos = 1.0 - rotation.one_minus_cos;
-    let residue_re = R::mul_add(sum, cos, phase.sin * rotation.sin);
-    let residue_im = R::mul_add(phase.sin, cos, -(sum * rotation.sin));
-    let residue_divisor = R::mul_add(
-        -2.0 * damping.image,
-        phase.one_minus_cos,
-        damping.one_plus_image_squared,
+    let gauss = v.flip_by_low_bit(
+        v.mul(v.splat(damping.amplitude), gauss),
+        half_turns.integer_bits,
     );
 
-    let (radius_squared, point) = point(x, damping);
-    let nodes = EitherRule {
-        odd: half_steps.is_odd(),
+    // (p + cos + i sin)(cos - i sin), and the square of the first factor.
+    let sum = v.sub(v.splat(1.0 + damping.image), phase.one_minus_cos);
+    let cos = v.sub(v.splat(1.0), rotation.one_minus_cos);
+    let residue_re = v.mul_add(sum, cos, v.mul(phase.sin, rotation.sin));
+    let residue_im = v.neg_mul_add(sum, rotation.sin, v.mul(phase.sin, cos));
+    let residue_divisor = v.neg_mul_add(
+        v.splat(2.0 * damping.image),
+        phase.one_minus_cos,
+        v.splat(damping.one_plus_image_squared),
+    );
+    let residue = v.div(gauss, residue_divisor);
+
+    let nodes = EitherRule::<V> {
+        on_the_steps: v.has_low_bit(half_steps.integer_bits),
         on: A::on(),
         between: A::between(),
     };
-    let total = Fraction::sum::<R>(point, nodes, nodes.on.len());
-    let inverse = 1.0 / total.divisor;
-    let gauss = gauss / residue_divisor;
-    let rule_re = damping.y * R::mul_add(radius_squared, total.s0, total.s1);
-    let rule_im = x * R::mul_add(radius_squared, total.s0, -total.s1);
+    let (rule_re, rule_im) = sum_of_nodes(v, x, damping, nodes, nodes.on.len());
     (
-        R::mul_add(rule_re, inverse, gauss * residue_re),
-        R::mul_add(rule_im, inverse, gauss * residue_im),
+        v.mul_add(residue, residue_re, rule_re),
+        v.mul_add(residue, residue_im, rule_im),
     )
 }
 
 /// The two rules of the core, and which of them a point takes.
 #[derive(Clone, Copy)]
-struct EitherRule {
-    odd: bool,
+struct EitherRule<V: Vector> {
+    on_the_steps: V::Mask,
     on: &'static [Node],
     between: &'static [Node],
 }
 
-impl Nodes for EitherRule {
+impl<V: Vector> Nodes<V> for EitherRule<V> {
     #[inline(always)]
-    fn at(self, k: usize) -> Node {
+    fn at(self, v: V, k: usize) -> (V::Value, V::Value) {
         let (on, between) = (self.on[k], self.between[k]);
-        Node {
-            t_squared: if self.odd {
-                on.t_squared
-            } else {
-                between.t_squared
-            },
-            inverse_weight: if self.odd {
-                on.inverse_weight
-            } else {
-                between.inverse_weight
-            },
-        }
+        (
+            v.select(
+                self.on_the_steps,
+                v.splat(on.t_squared),
+                v.splat(between.t_squared),
+            ),
+            v.select(
+                self.on_the_steps,
+                v.splat(on.inverse_weight),
+                v.splat(between.inverse_weight),
+            ),
+        )
     }
 }
 
 /// A rule of nodes alone: the wings, and the core where `y` is so large that the residue does not count and any set of nodes will do.
 #[inline(always)]
-fn rule<A, R: Arithmetic, const L: usize>(
-    x: &[f64; L],
+fn rule<A, V: Vector>(
+    v: V,
+    x: V::Value,
     damping: &Damping<A>,
     nodes: &'static [Node],
-    re: &mut [f64; L],
-    im: &mut [f64; L],
-) {
-    for lane in 0..L {
-        let (radius_squared, point) = point(x[lane], damping);
-        let total = Fraction::sum::<R>(point, nodes, nodes.len());
-        let inverse = 1.0 / total.divisor;
-        re[lane] = damping.y * R::mul_add(radius_squared, total.s0, total.s1) * inverse;
-        im[lane] = x[lane] * R::mul_add(radius_squared, total.s0, -total.s1) * inverse;
-    }
+) -> (V::Value, V::Value) {
+    sum_of_nodes(v, x, damping, nodes, nodes.len())
 }
 
-/// The shortest rule that serves the nearest point of the block.
 #[inline(always)]
-fn wing<A: Accuracy, R: Arithmetic, const L: usize>(
-    x: &[f64; L],
+fn sum_of_nodes<A, V: Vector>(
+    v: V,
+    x: V::Value,
     damping: &Damping<A>,
-    radius_squared: &[f64; L],
-    re: &mut [f64; L],
-    im: &mut [f64; L],
-) {
-    let [one, two, three, four] = A::WING_RADII_SQUARED;
-    // Every rule has its own copy of the code, with its nodes as constants in it.
-    if all_at_least(radius_squared, one) {
-        rule::<A, R, L>(x, damping, &rules::HERMITE_2, re, im);
-    } else if all_at_least(radius_squared, two) {
-        rule::<A, R, L>(x, damping, &rules::HERMITE_4, re, im);
-    } else if all_at_least(radius_squared, three) {
-        rule::<A, R, L>(x, damping, &rules::HERMITE_6, re, im);
-    } else if all_at_least(radius_squared, four) {
-        rule::<A, R, L>(x, damping, &rules::HERMITE_8, re, im);
-    } else {
-        rule::<A, R, L>(x, damping, &rules::HERMITE_12, re, im);
-    }
-    if damping.y < A::GAUSSIAN_IN_WING_BELOW_Y {
-        add_gaussian(x, re);
-    }
+    nodes: impl Nodes<V>,
+    count: usize,
+) -> (V::Value, V::Value) {
+    let (radius_squared, point) = point(v, x, damping);
+    let total = Fraction::sum(point, nodes, count);
+    let inverse = v.div(v.splat(1.0), total.divisor);
+    let product = v.mul(radius_squared, total.s0);
+    (
+        v.mul(v.mul(v.splat(damping.y), v.add(product, total.s1)), inverse),
+        v.mul(v.mul(x, v.sub(product, total.s1)), inverse),
+    )
 }

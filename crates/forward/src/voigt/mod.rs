@@ -23,8 +23,11 @@ mod lanes;
 mod quadrature;
 mod rules;
 pub mod scalar;
+mod vector;
 
 pub use accuracy::{Accuracy, Fast, Full};
-pub use arithmetic::{Arithmetic, Fused, Separate};
+pub use arithmetic::{Arithmetic, Separate};
+#[cfg(target_arch = "x86_64")]
+pub use arithmetic::{Fused, FusedWide};
 pub use dispatch::{InstructionSet, Precision, w_slice, w_slice_with};
 pub use lanes::{Damping, slope_lanes, w_lanes};

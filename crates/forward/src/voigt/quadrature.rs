@@ -8,9 +8,10 @@
 //! ```
 //!
 //! All terms are positive. The sums are carried as fractions over a common denominator: joining two of them takes five operations,
-//! a division on today's processors as much as sixteen, so one division at the end serves all nodes.
+//! a division on today's processors as much as sixteen, so one division at the end serves all nodes. The weight goes into the
+//! denominator, which saves a number for each node.
 
-use super::arithmetic::Arithmetic;
+use super::vector::Vector;
 
 /// A pair of nodes `±t` of a quadrature rule.
 #[doc(hidden)]
@@ -21,84 +22,95 @@ pub struct Node {
     pub(super) inverse_weight: f64,
 }
 
-/// A rule as a point sees it.
-pub(super) trait Nodes: Copy {
-    fn at(self, k: usize) -> Node;
+/// A rule as a vector of points sees it: which need not have the same nodes.
+pub(super) trait Nodes<V: Vector>: Copy {
+    /// `t²` and the inverse weight.
+    fn at(self, vector: V, k: usize) -> (V::Value, V::Value);
 }
 
-impl Nodes for &[Node] {
+impl<V: Vector> Nodes<V> for &[Node] {
     #[inline(always)]
-    fn at(self, k: usize) -> Node {
-        self[k]
+    fn at(self, vector: V, k: usize) -> (V::Value, V::Value) {
+        (
+            vector.splat(self[k].t_squared),
+            vector.splat(self[k].inverse_weight),
+        )
     }
 }
 
 /// What the sums need to know of a point.
 #[derive(Clone, Copy)]
-pub(super) struct Point {
+pub(super) struct Point<V: Vector> {
+    pub vector: V,
     /// `Re z² = x² - y²`.
-    pub re_z_squared: f64,
+    pub re_z_squared: V::Value,
     /// `(Im z²)² = 4 x² y²`.
-    pub im_z_squared_squared: f64,
+    pub im_z_squared_squared: V::Value,
 }
 
 /// `S0 = s0 / divisor`, `S1 = s1 / divisor`.
 #[derive(Clone, Copy)]
-pub(super) struct Fraction {
-    pub s0: f64,
-    pub s1: f64,
-    pub divisor: f64,
+pub(super) struct Fraction<V: Vector> {
+    pub s0: V::Value,
+    pub s1: V::Value,
+    pub divisor: V::Value,
 }
 
-impl Fraction {
+impl<V: Vector> Fraction<V> {
     #[inline(always)]
-    fn of<R: Arithmetic>(point: Point, node: Node) -> Self {
-        let distance = point.re_z_squared - node.t_squared;
+    fn one(point: Point<V>, nodes: impl Nodes<V>, k: usize) -> Self {
+        let v = point.vector;
+        let (t_squared, inverse_weight) = nodes.at(v, k);
+        let distance = v.sub(point.re_z_squared, t_squared);
+        let divisor = v.mul_add(distance, distance, point.im_z_squared_squared);
         Self {
-            s0: 1.0,
-            s1: node.t_squared,
-            divisor: R::mul_add(distance, distance, point.im_z_squared_squared)
-                * node.inverse_weight,
+            s0: v.splat(1.0),
+            s1: t_squared,
+            divisor: v.mul(divisor, inverse_weight),
         }
     }
 
     #[inline(always)]
-    fn join<R: Arithmetic>(self, other: Self) -> Self {
+    fn two(point: Point<V>, nodes: impl Nodes<V>, k: usize) -> Self {
+        let (v, a, b) = (
+            point.vector,
+            Self::one(point, nodes, k),
+            Self::one(point, nodes, k + 1),
+        );
         Self {
-            s0: R::mul_add(self.s0, other.divisor, other.s0 * self.divisor),
-            s1: R::mul_add(self.s1, other.divisor, other.s1 * self.divisor),
-            divisor: self.divisor * other.divisor,
+            s0: v.add(a.divisor, b.divisor),
+            s1: v.mul_add(a.s1, b.divisor, v.mul(b.s1, a.divisor)),
+            divisor: v.mul(a.divisor, b.divisor),
         }
     }
 
     #[inline(always)]
-    fn pair<R: Arithmetic>(point: Point, nodes: impl Nodes, first: usize) -> Self {
-        let a = Self::of::<R>(point, nodes.at(first));
-        let b = Self::of::<R>(point, nodes.at(first + 1));
-        Self {
-            s0: a.divisor + b.divisor,
-            s1: R::mul_add(a.s1, b.divisor, b.s1 * a.divisor),
-            divisor: a.divisor * b.divisor,
-        }
+    fn four(point: Point<V>, nodes: impl Nodes<V>, k: usize) -> Self {
+        Self::two(point, nodes, k).join(point.vector, Self::two(point, nodes, k + 2))
     }
 
     #[inline(always)]
-    fn four<R: Arithmetic>(point: Point, nodes: impl Nodes, first: usize) -> Self {
-        Self::pair::<R>(point, nodes, first).join::<R>(Self::pair::<R>(point, nodes, first + 2))
+    fn join(self, v: V, other: Self) -> Self {
+        Self {
+            s0: v.mul_add(self.s0, other.divisor, v.mul(other.s0, self.divisor)),
+            s1: v.mul_add(self.s1, other.divisor, v.mul(other.s1, self.divisor)),
+            divisor: v.mul(self.divisor, other.divisor),
+        }
     }
 
     /// The sum over all `count` nodes of a rule.
     #[inline(always)]
-    pub fn sum<R: Arithmetic>(point: Point, nodes: impl Nodes, count: usize) -> Self {
+    pub fn sum(point: Point<V>, nodes: impl Nodes<V>, count: usize) -> Self {
+        let v = point.vector;
         match count {
-            1 => Self::of::<R>(point, nodes.at(0)),
-            2 => Self::pair::<R>(point, nodes, 0),
-            3 => Self::pair::<R>(point, nodes, 0).join::<R>(Self::of::<R>(point, nodes.at(2))),
-            4 => Self::four::<R>(point, nodes, 0),
-            6 => Self::four::<R>(point, nodes, 0).join::<R>(Self::pair::<R>(point, nodes, 4)),
-            12 => Self::four::<R>(point, nodes, 0)
-                .join::<R>(Self::four::<R>(point, nodes, 4))
-                .join::<R>(Self::four::<R>(point, nodes, 8)),
+            1 => Self::one(point, nodes, 0),
+            2 => Self::two(point, nodes, 0),
+            3 => Self::two(point, nodes, 0).join(v, Self::one(point, nodes, 2)),
+            4 => Self::four(point, nodes, 0),
+            6 => Self::four(point, nodes, 0).join(v, Self::two(point, nodes, 4)),
+            12 => Self::four(point, nodes, 0)
+                .join(v, Self::four(point, nodes, 4))
+                .join(v, Self::four(point, nodes, 8)),
             _ => unreachable!("rules have 1, 2, 3, 4, 6 or 12 pairs of nodes"),
         }
     }

@@ -38,6 +38,17 @@ pub fn w(x: f64, y: f64) -> (f64, f64) {
     }
 }
 
+/// `dw/dz = -2 z w + 2 i / sqrt(pi)`, from `w` at the same point.
+///
+/// Accuracy: as [`super::slope_lanes`].
+#[must_use]
+pub fn slope(x: f64, y: f64, re: f64, im: f64) -> (f64, f64) {
+    (
+        -2.0 * (x * re - y * im),
+        std::f64::consts::FRAC_2_SQRT_PI - 2.0 * (x * im + y * re),
+    )
+}
+
 /// `exp(-x²)` with the rounding of the square made good.
 #[must_use]
 pub fn gaussian(x: f64) -> f64 {
