@@ -140,7 +140,7 @@ impl Fit {
             flags: answer.flags.names(),
             chi2_reduced: answer.chi2_reduced,
             iterations: answer.iterations,
-            stop: answer.stop.to_string(),
+            stop: answer.stop.name().to_owned(),
             messages: &answer.messages,
         }
     }
@@ -177,7 +177,9 @@ fn table(quantities: &[Quantity], answer: &Answer) -> String {
     let _ = writeln!(
         text,
         "\nreduced chi-square {:.4}, {} iterations, stopped: {}",
-        answer.chi2_reduced, answer.iterations, answer.stop
+        answer.chi2_reduced,
+        answer.iterations,
+        answer.stop.name()
     );
     let names = answer.flags.names();
     if names.is_empty() {

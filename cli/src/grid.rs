@@ -103,7 +103,7 @@ fn around_lines(setup: &Setup, species: &[Arc<Species>], medium: Medium) -> Rang
     });
     let in_medium_nm = |wavelength_vac_m: f64| match medium {
         Medium::Air => air::vacuum_to_air_m(wavelength_vac_m) * 1e9,
-        _ => wavelength_vac_m * 1e9,
+        Medium::Vacuum => wavelength_vac_m * 1e9,
     };
     if low_m < high_m || (low_m == high_m && low_m > 0.0) {
         return RangeNm {

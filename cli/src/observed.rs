@@ -4,7 +4,7 @@ use std::path::Path;
 
 use backlit_cubes::Spectrum;
 use backlit_inverse::setup::{Light, Setup};
-use backlit_units::{IntensityUnit, Medium, SpectralAxis};
+use backlit_units::{IntensityUnit, Medium, SpectralAxis, air};
 
 use crate::console::Console;
 use crate::failure::Failure;
@@ -97,45 +97,64 @@ impl Frame {
                 first_nm: reference.wavelength[first] * 1e9,
             });
         }
-        self.interpolated(&axis, &intensity, file).map(Some)
+        self.interpolated(setup, &axis, &intensity, file).map(Some)
     }
 
+    /// Linear between the channels of another axis; NaN beyond its ends, which only unused channels may be.
     fn interpolated(
         &self,
+        setup: &Setup,
         from: &SpectralAxis,
         values: &[f64],
         path: &Path,
     ) -> Result<Vec<f64>, Failure> {
-        let (have, need) = (from.centres_vac_m(), self.axis.centres_vac_m());
+        let have = from.centres_vac_m();
+        let [have_low, .., have_high] = *have else {
+            return Ok(vec![f64::NAN; self.axis.len()]);
+        };
         // A hundredth of a channel: the rounding of a printed wavelength, not a different grid.
-        let slack = |at: &[f64]| match at {
-            [a, b, ..] => 0.01 * (b - a),
-            _ => 0.0,
-        };
-        let slack = slack(have).min(slack(need));
-        let ends = |at: &[f64]| match at {
-            [] => (f64::NAN, f64::NAN),
-            [one] => (*one, *one),
-            [low, .., high] => (*low, *high),
-        };
-        let ((have_low, have_high), (need_low, need_high)) = (ends(have), ends(need));
-        if !(have_low <= need_low + slack && have_high >= need_high - slack) {
+        let slack = 0.01 * (have_high - have_low) / (have.len() - 1) as f64;
+        let reaches =
+            |wavelength: f64| (have_low - slack..=have_high + slack).contains(&wavelength);
+        let used = self.used(setup);
+        if !used.iter().all(|wavelength| reaches(*wavelength)) {
             return Err(Failure::BackgroundTooShort {
                 path: path.to_path_buf(),
                 have_low_nm: have_low * 1e9,
                 have_high_nm: have_high * 1e9,
-                need_low_nm: need_low * 1e9,
-                need_high_nm: need_high * 1e9,
+                need_low_nm: used.first().copied().unwrap_or(f64::NAN) * 1e9,
+                need_high_nm: used.last().copied().unwrap_or(f64::NAN) * 1e9,
             });
         }
         let at = |wavelength: f64| {
+            if !reaches(wavelength) {
+                return f64::NAN;
+            }
             let right = have
                 .partition_point(|h| *h < wavelength)
                 .clamp(1, have.len() - 1);
             let part = (wavelength - have[right - 1]) / (have[right] - have[right - 1]);
             values[right - 1] + part.clamp(0.0, 1.0) * (values[right] - values[right - 1])
         };
-        Ok(need.iter().map(|wavelength| at(*wavelength)).collect())
+        Ok(self.axis.centres_vac_m().iter().map(|w| at(*w)).collect())
+    }
+
+    /// The channel centres, vacuum, within the setup's ranges.
+    fn used(&self, setup: &Setup) -> Vec<f64> {
+        let inside = |wavelength_vac_m: f64| {
+            let in_file_nm = 1e9
+                * match self.medium {
+                    Medium::Air => air::vacuum_to_air_m(wavelength_vac_m),
+                    Medium::Vacuum => wavelength_vac_m,
+                };
+            setup.spectrum.use_nm.as_ref().is_none_or(|ranges| {
+                ranges
+                    .iter()
+                    .any(|&(low, high)| (low..=high).contains(&in_file_nm))
+            })
+        };
+        let centres = self.axis.centres_vac_m();
+        centres.iter().copied().filter(|w| inside(*w)).collect()
     }
 }
 

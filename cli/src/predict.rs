@@ -156,6 +156,12 @@ impl Predict {
         let setup = Setup::read(&self.setup)?;
         let place = self.place(console, &setup)?;
         let measured = place.frame.measured_background(console, &setup)?;
+        let mut setup = setup;
+        if setup.background.shape_terms == 0 {
+            // `use_nm` says what a fit looks at; a prediction fills every channel. Only the terms that bend the
+            // background are defined over these ranges.
+            setup.spectrum.use_nm = None;
+        }
         let problem = |setup: &Setup| {
             let (axis, unit) = (&place.frame.axis, &place.frame.unit);
             Problem::new(setup, axis, unit, Catalogue::builtin(), measured.as_deref())

@@ -93,7 +93,6 @@ impl Species {
                     self.range.is_none()
                         || entry.lines.iter().any(|l| self.inside(l.wavelength_vac_m))
                 })
-                .cloned()
                 .collect()
         };
         let records: Vec<SpeciesRecord> = chosen
