@@ -108,7 +108,7 @@ impl<'a> Exact<'a> {
         match &self.sightline.background {
             Background::Dark => 0.0,
             Background::Measured { radiance } => {
-                scale * interpolate_channels(&self.sightline.channels, radiance, wavelength_vac_m)
+                interpolate_channels(&self.sightline.channels, radiance, wavelength_vac_m)
             }
             Background::Blackbody { shape_terms } => {
                 let shape = &self.parameters[Layout::SHAPE..Layout::SHAPE + shape_terms];
@@ -212,9 +212,7 @@ fn observed_with(sightline: &Sightline, parameters: &[f64], rule: &[(f64, f64)])
         .iter()
         .enumerate()
         .map(|(channel, &(low, high))| match &sightline.background {
-            Background::Measured { radiance } => {
-                parameters[Layout::SCALE].exp() * radiance[channel]
-            }
+            Background::Measured { radiance } => radiance[channel],
             Background::Dark => 0.0,
             Background::Blackbody { .. } => smooth_mean(&exact, low, high),
         })

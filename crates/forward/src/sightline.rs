@@ -143,7 +143,8 @@ pub enum Background {
         /// Number of Legendre terms a_1..a_n.
         shape_terms: usize,
     },
-    /// A spectrum measured without the gas, in W m⁻² sr⁻¹ m⁻¹ before `scale`, one value a channel in use.
+    /// A spectrum measured without the gas, as the data show it (`scale` does not apply to it), one value a
+    /// channel in use.
     Measured {
         /// Radiance a channel.
         radiance: Vec<f64>,

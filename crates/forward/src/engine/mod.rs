@@ -20,6 +20,7 @@ mod transfer;
 mod tests;
 
 pub use gram::Gram;
+pub use transfer::MOST_CLOUDS;
 
 use crate::continuum::{Continuum, ContinuumColumns};
 use crate::lanes::{LANES, NormalIntegral, dispatch};
@@ -204,12 +205,6 @@ impl Engine {
             }
         }
         self.lay_background(parameters, continuum, column_of, stride, rows);
-        let scale = column_of[Layout::SCALE];
-        if scale > 0 {
-            for row in rows.chunks_exact_mut(stride) {
-                row[scale] = row[0];
-            }
-        }
     }
 
     fn lay_background(
@@ -230,6 +225,9 @@ impl Engine {
             (Background::Blackbody { .. }, Some(continuum)) => {
                 continuum.evaluate(parameters, channels, columns);
                 add(0, &columns.value);
+                if column_of[Layout::SCALE] > 0 {
+                    add(column_of[Layout::SCALE], &columns.value);
+                }
                 for (parameter, values) in [
                     (Layout::BACKGROUND_TEMPERATURE, &columns.temperature),
                     (Layout::DILUTION, &columns.dilution),
@@ -245,10 +243,7 @@ impl Engine {
                 }
             }
             (Background::Measured { radiance }, _) => {
-                let scale = parameters[Layout::SCALE].exp();
-                for (row, value) in rows.chunks_exact_mut(stride).zip(radiance) {
-                    row[0] += scale * value;
-                }
+                add(0, radiance);
             }
             _ => {}
         }

@@ -113,8 +113,8 @@ impl Kernel for Pass<'_> {
                 Background::Dark => {}
                 Background::Measured { radiance } => {
                     for lane in 0..LANES {
-                        behind[lane] = scale
-                            * interpolate_channels(&sightline.channels, radiance, wavelength[lane]);
+                        behind[lane] =
+                            interpolate_channels(&sightline.channels, radiance, wavelength[lane]);
                     }
                 }
                 Background::Blackbody { .. } => {
@@ -225,6 +225,16 @@ impl Kernel for Pass<'_> {
                 }
                 values
             };
+            if column_of[Layout::SCALE] > 0 {
+                // A measured background is what it is: only the gas's own light scales.
+                let mut values = excess;
+                if matches!(sightline.background, Background::Measured { .. }) {
+                    for lane in 0..LANES {
+                        values[lane] -= behind[lane] * through[lane];
+                    }
+                }
+                write(column_of[Layout::SCALE], &values);
+            }
             if column_of[Layout::BACKGROUND_TEMPERATURE] > 0 {
                 write(
                     column_of[Layout::BACKGROUND_TEMPERATURE],

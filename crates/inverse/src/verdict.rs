@@ -1,0 +1,263 @@
+//! What the numbers of a fit are worth: the flags, and why each was raised.
+
+use crate::coordinate::Kind;
+use crate::fit::Found;
+use crate::problem::Problem;
+use backlit_forward::engine::PeakDepth;
+
+/// The flags of one fit: bits with fixed names.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Default)]
+pub struct Flags(pub u32);
+
+impl Flags {
+    /// No minimum was reached.
+    pub const NOT_CONVERGED: u32 = 1;
+    /// A value stands at the edge of its range.
+    pub const AT_BOUND: u32 = 2;
+    /// Gas and background are equally hot.
+    pub const NO_CONTRAST: u32 = 4;
+    /// All lines of a species are opaque.
+    pub const SATURATED: u32 = 8;
+    /// A species does not stand out of the noise.
+    pub const NOT_DETECTED: u32 = 16;
+    /// Some values cannot be told apart.
+    pub const DEGENERATE: u32 = 32;
+    /// Too few usable channels.
+    pub const TOO_LITTLE_DATA: u32 = 64;
+    /// The model does not describe the data.
+    pub const POOR_FIT: u32 = 128;
+
+    /// Bit and name of every flag.
+    pub const ALL: [(u32, &'static str); 8] = [
+        (Self::NOT_CONVERGED, "not_converged"),
+        (Self::AT_BOUND, "at_bound"),
+        (Self::NO_CONTRAST, "no_contrast"),
+        (Self::SATURATED, "saturated"),
+        (Self::NOT_DETECTED, "not_detected"),
+        (Self::DEGENERATE, "degenerate"),
+        (Self::TOO_LITTLE_DATA, "too_little_data"),
+        (Self::POOR_FIT, "poor_fit"),
+    ];
+
+    /// Raises a flag.
+    pub fn raise(&mut self, flag: u32) {
+        self.0 |= flag;
+    }
+
+    /// True if the flag is up.
+    pub fn has(self, flag: u32) -> bool {
+        self.0 & flag != 0
+    }
+
+    /// Names of the flags that are up.
+    pub fn names(self) -> Vec<&'static str> {
+        Self::ALL
+            .iter()
+            .filter(|(bit, _)| self.has(*bit))
+            .map(|&(_, name)| name)
+            .collect()
+    }
+}
+
+/// Two values with a stronger correlation are one, if that leaves them uncertain by more than
+/// [`LOOSE`].
+const TIED: f64 = 0.99;
+/// Relative standard deviation above which a tied value is not worth its name.
+const LOOSE: f64 = 0.1;
+/// A correlation that no reader should overlook however small the standard deviations are.
+const INSEPARABLE: f64 = 0.9995;
+/// Gas and background closer than this many standard deviations are as good as equal.
+const CONTRAST: f64 = 3.0;
+/// Optical depth of the faintest line from which a column is a guess at any noise.
+const OPAQUE: f64 = 50.0;
+/// Optical depth from which a column that the noise leaves open is called saturated.
+const BLACK: f64 = 3.0;
+/// Standard deviation of a column, in e-folds, from which it is open.
+const OPEN: f64 = 0.25;
+/// Reduced chi-square is too large beyond this many of its standard deviations, and beyond the factor.
+const MISFIT: f64 = 5.0;
+const MISFIT_FACTOR: f64 = 1.15;
+
+/// Raises the flags that concern values which were found, and says why.
+pub(crate) fn judge(
+    problem: &Problem,
+    found: &Found,
+    flags: &mut Flags,
+    messages: &mut Vec<String>,
+) {
+    bounds(problem, found, flags, messages);
+    contrast(problem, found, flags, messages);
+    saturation(problem, found, flags, messages);
+    ties(problem, found, flags, messages);
+}
+
+fn bounds(problem: &Problem, found: &Found, flags: &mut Flags, messages: &mut Vec<String>) {
+    for &i in &found.free {
+        let value = &problem.free[i];
+        let at = found.parameters[value.parameter];
+        let margin = 1e-9 * (value.high - value.low);
+        let side = if at <= value.low + margin {
+            "lower"
+        } else if at >= value.high - margin {
+            "upper"
+        } else {
+            continue;
+        };
+        flags.raise(Flags::AT_BOUND);
+        messages.push(format!(
+            "{} stands at its {side} bound",
+            problem.quantities()[i].name
+        ));
+    }
+}
+
+fn contrast(problem: &Problem, found: &Found, flags: &mut Flags, messages: &mut Vec<String>) {
+    use backlit_forward::{Background, Layout};
+    if !matches!(
+        problem.engine.sightline().background,
+        Background::Blackbody { .. }
+    ) || (found.parameters[Layout::DILUTION] - 1.0).abs() > 0.05
+    {
+        return;
+    }
+    for (cloud, place) in problem.engine.layout().clouds.iter().enumerate() {
+        if found.absent.contains(&cloud) {
+            continue;
+        }
+        let index_of = |parameter: usize| {
+            found
+                .free
+                .iter()
+                .position(|&i| problem.free[i].parameter == parameter)
+        };
+        let gas = index_of(place.temperature());
+        let behind = index_of(Layout::BACKGROUND_TEMPERATURE);
+        let variance = |a: Option<usize>, b: Option<usize>| match (a, b) {
+            (Some(a), Some(b)) => found.covariance.matrix[(a, b)],
+            _ => 0.0,
+        };
+        let sigma = (variance(gas, gas) + variance(behind, behind) - 2.0 * variance(gas, behind))
+            .max(0.0)
+            .sqrt();
+        let apart = found.parameters[place.temperature()]
+            - found.parameters[Layout::BACKGROUND_TEMPERATURE];
+        if (gas.is_some() || behind.is_some()) && apart.abs() < CONTRAST * sigma
+            || apart.abs() < 1e-9
+        {
+            flags.raise(Flags::NO_CONTRAST);
+            messages.push(format!(
+                "cloud {} is within {:.1} standard deviations of the background's temperature",
+                cloud + 1,
+                if sigma > 0.0 {
+                    apart.abs() / sigma
+                } else {
+                    0.0
+                }
+            ));
+        }
+    }
+}
+
+fn saturation(problem: &Problem, found: &Found, flags: &mut Flags, messages: &mut Vec<String>) {
+    for (position, &i) in found.free.iter().enumerate() {
+        let value = &problem.free[i];
+        let (Kind::Column, Some(cloud), Some(species)) = (value.kind, value.cloud, value.species)
+        else {
+            continue;
+        };
+        if found.absent_columns.contains(&i) {
+            continue;
+        }
+        // Lines that the noise hides say nothing.
+        let seen: Vec<f64> = found
+            .depths
+            .iter()
+            .filter(|(depth, seen)| depth.cloud == cloud && depth.species == species && *seen)
+            .map(|(depth, _): &(PeakDepth, bool)| depth.optical_depth)
+            .collect();
+        let faintest = seen.iter().copied().fold(f64::INFINITY, f64::min);
+        let open = found.covariance.sigma(position) > OPEN;
+        if !seen.is_empty() && (faintest > OPAQUE || (faintest > BLACK && open)) {
+            flags.raise(Flags::SATURATED);
+            messages.push(format!(
+                "every line of {} that shows is opaque (optical depth {faintest:.3} and more)",
+                problem.species[cloud][species]
+            ));
+        }
+    }
+}
+
+fn ties(problem: &Problem, found: &Found, flags: &mut Flags, messages: &mut Vec<String>) {
+    let quantities = problem.quantities();
+    for (a, &i) in found.free.iter().enumerate() {
+        if found.absent_columns.contains(&i) {
+            continue;
+        }
+        let value = &problem.free[i];
+        if !found.covariance.sigma(a).is_finite() {
+            flags.raise(Flags::DEGENERATE);
+            messages.push(format!("{} has no effect on the data", quantities[i].name));
+            continue;
+        }
+        for (b, &j) in found.free.iter().enumerate().skip(a + 1) {
+            let correlation = found.covariance.correlation(a, b);
+            let loose = loose(found, a, value.kind) || loose(found, b, problem.free[j].kind);
+            if correlation.abs() > INSEPARABLE || (correlation.abs() > TIED && loose) {
+                flags.raise(Flags::DEGENERATE);
+                messages.push(format!(
+                    "{} and {}: correlation {correlation:.4}",
+                    quantities[i].name, quantities[j].name
+                ));
+            }
+        }
+    }
+    // Three or more values may be tied with no two of them strongly correlated.
+    if !flags.has(Flags::DEGENERATE) && found.covariance.smallest_eigenvalue < 1e-9 {
+        flags.raise(Flags::DEGENERATE);
+        let names: Vec<&str> = found
+            .free
+            .iter()
+            .zip(&found.covariance.weakest_direction)
+            .filter(|(_, part)| part.abs() > 0.2)
+            .map(|(&i, _)| quantities[i].name.as_str())
+            .collect();
+        messages.push(format!(
+            "only a combination is fixed of: {}",
+            names.join(", ")
+        ));
+    }
+}
+
+fn loose(found: &Found, position: usize, kind: Kind) -> bool {
+    let sigma = found.covariance.sigma(position);
+    match kind {
+        Kind::Temperature | Kind::Column | Kind::Scale => sigma > LOOSE,
+        Kind::Dilution => sigma > 0.1 * LOOSE,
+        _ => false,
+    }
+}
+
+/// Raises `poor_fit` where the residuals are larger than the noise, over all channels or near the lines.
+pub(crate) fn misfit(
+    chi_square: f64,
+    degrees: f64,
+    near_lines: (f64, f64),
+    flags: &mut Flags,
+    messages: &mut Vec<String>,
+) {
+    let too_large = |chi_square: f64, degrees: f64| {
+        degrees > 0.0
+            && chi_square > degrees + MISFIT * (2.0 * degrees).sqrt()
+            && chi_square > MISFIT_FACTOR * degrees
+    };
+    if too_large(chi_square, degrees) {
+        flags.raise(Flags::POOR_FIT);
+        messages.push(format!("reduced chi-square is {:.3}", chi_square / degrees));
+    } else if too_large(near_lines.0, near_lines.1) {
+        flags.raise(Flags::POOR_FIT);
+        messages.push(format!(
+            "reduced chi-square near the lines is {:.3}",
+            near_lines.0 / near_lines.1
+        ));
+    }
+}
