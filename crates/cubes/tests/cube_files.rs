@@ -236,6 +236,60 @@ fn integers_scalars_and_wide_masks_are_understood() {
 }
 
 #[test]
+fn chunks_of_any_shape_are_read_right_and_tiles_keep_to_them() {
+    for chunk in [(1, 1, N), (2, 3, 4), (3, 4, 1), (1, 4, 6), (3, 2, 5)] {
+        let (_dir, path) = place();
+        foreign(&path, |file| {
+            file.unlink("intensity").unwrap();
+            let cube = Array3::from_shape_fn((3, 4, N), |(y, x, i)| truth(y, x, i));
+            let builder = file.new_dataset_builder().chunk(chunk).shuffle().deflate(5);
+            builder.with_data(&cube).create("intensity").unwrap();
+        });
+        let cube = Cube::open(&path).unwrap();
+        for tile_pixels in [1, 3, 6, 12] {
+            let tiles = cube.tiles(tile_pixels);
+            for tile in &tiles {
+                if chunk.0 * chunk.1 <= tile_pixels {
+                    let cut =
+                        |at: usize, size: usize, end: usize| !at.is_multiple_of(size) && at != end;
+                    assert!(
+                        !cut(tile.y0, chunk.0, 3) && !cut(tile.y1, chunk.0, 3),
+                        "{tile:?}"
+                    );
+                    assert!(
+                        !cut(tile.x0, chunk.1, 4) && !cut(tile.x1, chunk.1, 4),
+                        "{tile:?}"
+                    );
+                }
+                let data = cube.read_tile(tile).unwrap();
+                for ((p, i), value) in data.intensity.indexed_iter() {
+                    let (y, x) = tile.position(p);
+                    assert_eq!(*value, truth(y, x, i), "{chunk:?} {tile:?}");
+                }
+            }
+            assert_eq!(tiles.iter().map(|t| t.pixels()).sum::<usize>(), 12);
+        }
+        let pixel = cube.spectrum(2, 1).unwrap();
+        assert_eq!(
+            pixel.intensity,
+            (0..N).map(|i| truth(2, 1, i)).collect::<Vec<_>>()
+        );
+        assert_eq!(
+            (pixel.wavelength, pixel.medium),
+            (wavelengths(), Some(Medium::Air))
+        );
+        assert!(matches!(
+            cube.spectrum(3, 0),
+            Err(CubesError::UnknownTile { .. })
+        ));
+        assert!(matches!(
+            cube.spectrum(0, usize::MAX),
+            Err(CubesError::UnknownTile { .. })
+        ));
+    }
+}
+
+#[test]
 fn nan_in_the_data_comes_masked() {
     let (_dir, path) = place();
     foreign(&path, |file| {

@@ -56,6 +56,36 @@ impl SmallDisk {
     }
 }
 
+#[test]
+fn a_disk_that_may_not_be_written_is_named() {
+    let Some(disk) = SmallDisk::mount(64) else {
+        return;
+    };
+    let spectrum = Spectrum {
+        wavelength: vec![1e-7, 2e-7],
+        intensity: vec![1.0, 2.0],
+        mask: vec![false; 2],
+        ..Spectrum::default()
+    };
+    let read_only = Command::new("mount")
+        .args(["-o", "remount,ro"])
+        .arg(disk.folder.path())
+        .status();
+    assert!(read_only.unwrap().success());
+    for error in [
+        spectrum.write(disk.path("s.csv"), false).unwrap_err(),
+        spectrum.write(disk.path("s.h5"), true).unwrap_err(),
+        MapsWriter::create(disk.path("maps.h5"), spec(), false).unwrap_err(),
+    ] {
+        let message = error.to_string();
+        assert!(message.contains("cannot create"), "{message}");
+        assert!(
+            message.contains("choose a folder where you may write"),
+            "{message}"
+        );
+    }
+}
+
 impl Drop for SmallDisk {
     fn drop(&mut self) {
         let _ = Command::new("umount").arg(self.folder.path()).status();

@@ -85,6 +85,12 @@ fn check(path: &Path) {
     for ((y, x), flag) in maps.flags().unwrap().indexed_iter() {
         assert_eq!(*flag, truth_flag(y, x));
     }
+    let names: Vec<&str> = maps.names().collect();
+    assert_eq!(
+        names,
+        ["cloud1_temperature", "chi2_reduced"],
+        "in the order of the specification"
+    );
     assert_eq!(maps.flag_names, FlagName::standard());
     assert_eq!(maps.attributes["setup"], "[instrument]\nfwhm_nm = 0.1\n");
     assert_eq!(maps.attributes["end"], "now");

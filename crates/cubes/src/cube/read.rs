@@ -9,6 +9,7 @@ use ndarray::{Array1, Array2, Array3, ArrayView1};
 use super::{Tile, divide, masks};
 use crate::archive::Archive;
 use crate::error::{CubesError, Place};
+use crate::spectrum::Spectrum;
 
 /// Bytes of f64 intensity in a tile of the default size.
 const TILE_BYTES: usize = 3 << 20;
@@ -193,6 +194,31 @@ impl Cube {
             intensity,
             uncertainty,
             mask,
+        })
+    }
+
+    /// One pixel as a spectrum.
+    ///
+    /// # Errors
+    /// As [`Cube::read_tile`].
+    pub fn spectrum(&self, y: usize, x: usize) -> Result<Spectrum, CubesError> {
+        let (y1, x1) = (y.saturating_add(1), x.saturating_add(1));
+        let data = self.read_tile(&Tile {
+            index: 0,
+            y0: y,
+            y1,
+            x0: x,
+            x1,
+        })?;
+        Ok(Spectrum {
+            wavelength: self.wavelength.clone(),
+            medium: self.medium,
+            intensity: data.intensity.row(0).to_vec(),
+            uncertainty: data.uncertainty.row(0).map(|row| row.to_vec()),
+            mask: data.mask.row(0).to_vec(),
+            intensity_unit: self.intensity_unit.clone(),
+            path: self.path.clone(),
+            notes: self.notes.clone(),
         })
     }
 

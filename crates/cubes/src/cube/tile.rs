@@ -20,7 +20,7 @@ pub struct Tile {
 impl Tile {
     /// Number of pixels.
     pub fn pixels(&self) -> usize {
-        self.height() * self.width()
+        self.height().saturating_mul(self.width())
     }
 
     /// Number of rows.

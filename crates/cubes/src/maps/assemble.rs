@@ -3,6 +3,7 @@
 use std::collections::BTreeMap;
 use std::path::Path;
 
+use hdf5::plist::group_create::LinkCreationOrder;
 use hdf5::types::VarLenUnicode;
 use hdf5::{Dataset, Group, H5Type};
 use ndarray::Array2;
@@ -59,9 +60,11 @@ pub fn assemble(
     for (name, text) in attributes {
         archive::write_text(&file, name, text)?;
     }
+    // Readers that list a group by creation see the quantities in the order of the specification.
     let group = file
         .create_group_builder()
         .obj_track_times(false)
+        .with_gcpl(|p| p.link_creation_order(LinkCreationOrder::Indexed))
         .create("maps")?;
     for (q, quantity) in spec.quantities.iter().enumerate() {
         let mut map = Array2::from_elem((spec.ny, spec.nx), f64::NAN);

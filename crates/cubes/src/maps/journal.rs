@@ -217,7 +217,7 @@ impl Drop for Journal {
 
 /// Bytes of a tile's payload.
 pub fn payload_bytes(quantities: usize, pixels: usize) -> usize {
-    pixels * (8 * quantities + 4)
+    pixels.saturating_mul(8 * quantities + 4)
 }
 
 fn encode(tile: usize, values: impl Iterator<Item = f64>, flags: &[u32]) -> Vec<u8> {
@@ -296,7 +296,7 @@ fn next_record(file: &mut impl Read, content: &Content) -> io::Result<Option<Til
         return Ok(None);
     }
     let index = u32_at(&record, 4) as usize;
-    let Some(tile) = content.spec.tiles.iter().find(|t| t.index == index) else {
+    let Some(tile) = content.spec.tile(index) else {
         return Ok(None);
     };
     let payload = record_payload(&content.spec, tile);

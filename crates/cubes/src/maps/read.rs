@@ -3,7 +3,7 @@
 use std::collections::BTreeMap;
 use std::path::{Path, PathBuf};
 
-use hdf5::{Dataset, Group};
+use hdf5::{Dataset, Group, IndexType, IterationOrder};
 use ndarray::Array2;
 
 use super::spec::{FlagName, Quantity};
@@ -35,7 +35,11 @@ impl Maps {
         let path = path.as_ref();
         let archive = Archive::open(path)?;
         let group = archive.group("maps")?;
-        let names = group.member_names().map_err(archive.reading("maps"))?;
+        // Files that do not track the order of creation are listed by name.
+        let names = group
+            .member_names_by(IndexType::CreationOrder, IterationOrder::Increasing)
+            .or_else(|_| group.member_names())
+            .map_err(archive.reading("maps"))?;
         let mut shape = None;
         let mut quantities = Vec::new();
         let mut flag_names = Vec::new();

@@ -79,12 +79,18 @@ pub struct MapsSpec {
     pub attributes: BTreeMap<String, String>,
     /// What must match for a run to be continued: lines `key: value`, as `setup: ...`, `input sha256: ...`.
     pub identity: String,
-    /// The tiles; pixels outside all of them stay NaN.
+    /// The tiles, their indices rising; pixels outside all of them stay NaN.
     pub tiles: Vec<Tile>,
 }
 
 impl MapsSpec {
-    /// Refuses repeated names, and tiles that repeat, overlap or reach outside.
+    /// The tile of an index.
+    pub(super) fn tile(&self, index: usize) -> Option<&Tile> {
+        let at = self.tiles.binary_search_by_key(&index, |t| t.index).ok()?;
+        self.tiles.get(at)
+    }
+
+    /// Refuses repeated names, and tiles whose indices do not rise, that overlap or reach outside.
     pub(super) fn verify(&self, path: &Path) -> Result<(), CubesError> {
         let bad = |what, item: String| CubesError::BadMapsSpec {
             path: path.into(),
@@ -100,11 +106,11 @@ impl MapsSpec {
                 return Err(bad("quantities", quantity.name.clone()));
             }
         }
-        let mut indices = BTreeSet::new();
+        let mut last = None;
         let mut covered = vec![false; self.ny * self.nx];
         for tile in &self.tiles {
             let inside = tile.pixels() > 0 && tile.y1 <= self.ny && tile.x1 <= self.nx;
-            if !inside || !indices.insert(tile.index) {
+            if !inside || last.replace(tile.index) >= Some(tile.index) {
                 return Err(bad("tiles", format!("tile {}", tile.index)));
             }
             for y in tile.y0..tile.y1 {

@@ -187,7 +187,7 @@ impl MapsWriter {
         values: &Array2<f64>,
         flags: &[u32],
     ) -> Result<(), CubesError> {
-        let Some(tile) = self.spec.tiles.iter().find(|t| t.index == tile_index) else {
+        let Some(tile) = self.spec.tile(tile_index) else {
             return Err(CubesError::UnknownTile {
                 path: self.path.clone(),
                 tile: tile_index,

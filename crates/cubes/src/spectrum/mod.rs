@@ -44,7 +44,7 @@ impl Spectrum {
     /// whose uncertainty is not positive and finite is masked, and `notes` says how many were.
     ///
     /// # Errors
-    /// One [`CubesError`] with the place for everything that is not as `interface` says: see its variants.
+    /// One [`CubesError`] with the place for whatever is not as it should be: see its variants.
     pub fn read(path: impl AsRef<Path>) -> Result<Self, CubesError> {
         let path = path.as_ref();
         if path.is_dir() {
