@@ -3,9 +3,7 @@
 //! `f64::mul_add` is one instruction inside code compiled for it and a slow library call elsewhere, so the choice must be made together
 //! with the instruction set, by the caller that knows it.
 
-#[cfg(target_arch = "x86_64")]
-use super::vector::Pair;
-use super::vector::{OneLane, Vector};
+use super::vector::{OneLane, Pair, Vector};
 
 /// The arithmetic of a kernel, chosen together with the instruction set that its code is compiled for.
 pub trait Arithmetic: Copy + Send + Sync + 'static {
@@ -31,7 +29,7 @@ pub struct FusedWide;
 #[derive(Clone, Copy, Debug)]
 pub struct Fused;
 
-/// Two roundings, one point after the other: for code that must run anywhere.
+/// Two roundings, two points side by side, which compilers join where they can: for code that must run anywhere.
 #[derive(Clone, Copy, Debug)]
 pub struct Separate;
 
@@ -66,11 +64,11 @@ impl Arithmetic for Fused {
 }
 
 impl Arithmetic for Separate {
-    type Vector = OneLane;
+    type Vector = Pair<OneLane>;
 
     #[inline(always)]
-    fn vector() -> Option<OneLane> {
-        Some(OneLane)
+    fn vector() -> Option<Self::Vector> {
+        Some(Pair(OneLane))
     }
 
     #[inline(always)]

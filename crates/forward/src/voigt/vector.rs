@@ -178,7 +178,8 @@ pub struct OneLane;
 
 impl Vector for OneLane {
     type Value = f64;
-    type Mask = bool;
+    /// All bits set for true: a choice by bits costs nothing where a branch would often be guessed wrong.
+    type Mask = u64;
     const LANES: usize = 1;
 
     #[inline(always)]
@@ -222,28 +223,28 @@ impl Vector for OneLane {
         if a > b { a } else { b }
     }
     #[inline(always)]
-    fn select(self, mask: bool, yes: f64, no: f64) -> f64 {
-        if mask { yes } else { no }
+    fn select(self, mask: u64, yes: f64, no: f64) -> f64 {
+        f64::from_bits(no.to_bits() ^ ((yes.to_bits() ^ no.to_bits()) & mask))
     }
     #[inline(always)]
-    fn not_at_least(self, value: f64, bound: f64) -> bool {
-        value < bound || value.is_nan()
+    fn not_at_least(self, value: f64, bound: f64) -> u64 {
+        u64::from(value < bound || value.is_nan()).wrapping_neg()
     }
     #[inline(always)]
-    fn not_below(self, value: f64, bound: f64) -> bool {
-        value >= bound || value.is_nan()
+    fn not_below(self, value: f64, bound: f64) -> u64 {
+        u64::from(value >= bound || value.is_nan()).wrapping_neg()
     }
     #[inline(always)]
-    fn or(self, a: bool, b: bool) -> bool {
+    fn or(self, a: u64, b: u64) -> u64 {
         a | b
     }
     #[inline(always)]
-    fn any(self, mask: bool) -> bool {
-        mask
+    fn any(self, mask: u64) -> bool {
+        mask != 0
     }
     #[inline(always)]
-    fn has_low_bit(self, bits: f64) -> bool {
-        bits.to_bits() & 1 == 1
+    fn has_low_bit(self, bits: f64) -> u64 {
+        (bits.to_bits() & 1).wrapping_neg()
     }
     #[inline(always)]
     fn flip_by_low_bit(self, value: f64, bits: f64) -> f64 {
