@@ -81,7 +81,7 @@ pub fn fit(
         record(quantities, &answer, &mut values, pixel);
         flags[pixel] = answer.flags.0;
         fitted += u64::from(answer.values.iter().any(|value| value.is_finite()));
-        if answer.flags.0 == 0 {
+        if answer.values.iter().all(|value| value.is_finite()) {
             near = Some(answer);
         }
     }

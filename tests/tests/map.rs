@@ -195,7 +195,7 @@ fn an_existing_file_is_kept_unless_overwrite_is_given() {
 #[test]
 #[cfg(unix)]
 fn an_interrupted_run_says_how_to_continue_and_continues_to_the_same_maps() {
-    let desk = desk(120, 120);
+    let desk = desk(60, 120);
     let arguments = [
         "map",
         "c.h5",
@@ -242,7 +242,7 @@ fn an_interrupted_run_says_how_to_continue_and_continues_to_the_same_maps() {
     assert!(output.stdout.is_empty());
     assert!(stderr.starts_with("error: interrupted after "), "{stderr}");
     assert!(
-        stderr.contains("of 14400 spectra; they are kept in m.h5.journal\nhint: "),
+        stderr.contains("of 7200 spectra; they are kept in m.h5.journal\nhint: "),
         "{stderr}"
     );
     assert!(journal.exists() && !desk.path("m.h5").exists());

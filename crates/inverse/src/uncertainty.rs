@@ -29,6 +29,14 @@ impl Covariance {
     /// given size. `None` if LAPACK fails, which finite input does not make it do.
     pub fn of(gram: &Gram) -> Option<Self> {
         let count = gram.free();
+        if count == 0 {
+            // LAPACK refuses a matrix of no size: where gas is absent and the background known, nothing is free.
+            return Some(Covariance {
+                matrix: Array2::zeros((0, 0)),
+                smallest_eigenvalue: 1.0,
+                weakest_direction: Array1::zeros(0),
+            });
+        }
         let size: Vec<f64> = (0..count).map(|i| gram.normal(i, i).sqrt()).collect();
         let scaled = Array2::from_shape_fn((count, count), |(i, j)| {
             if size[i] > 0.0 && size[j] > 0.0 {
@@ -59,11 +67,7 @@ impl Covariance {
         Some(Covariance {
             matrix,
             smallest_eigenvalue: values.first().copied().unwrap_or(1.0),
-            weakest_direction: if count > 0 {
-                vectors.column(0).to_owned()
-            } else {
-                Array1::zeros(0)
-            },
+            weakest_direction: vectors.column(0).to_owned(),
         })
     }
 
