@@ -62,6 +62,9 @@ def points():
     for y in (1e-300, 1e-100, 1e-30, 1e-20, 1e-15, 1e-12, 1e-10, 3e-9):
         for _ in range(20):
             yield sign() * draw.uniform(0, 26), y
+    for _ in range(150):
+        # Where the Gaussian and the damping wing of an almost undamped line are of one size.
+        yield sign() * draw.uniform(6, 9), 10 ** draw.uniform(-20, -8)
     for _ in range(80):
         yield 0.0, 10 ** draw.uniform(-8, 3)
     for k in range(40):

@@ -71,13 +71,15 @@ impl<A: Accuracy> Damping<A> {
 /// re + i im = exp(-z²) erfc(-i z)
 /// ```
 ///
-/// `x`: distances from the line centre in Gaussian 1/e half-widths, any order, any size. `R` must be [`super::Fused`] exactly where the
-/// calling code is compiled with FMA instructions. Not finite `x` gives NaN or the limit 0.
+/// `x`: distances from the line centre in Gaussian 1/e half-widths, any order, any size; one that is not finite gives NaN or the limit 0.
+/// `L` is best a multiple of 8. `R` must be [`super::FusedWide`] or [`super::Fused`] exactly where the calling code is compiled for
+/// x86-64-v4 or -v3: elsewhere they give the same numbers, slowly.
 ///
 /// Method: modified trapezoidal rule (Matta & Reichel 1971, Math. Comp. 25, 339; Hunter & Regan 1972, Math. Comp. 26, 539; Al Azah &
 /// Chandler-Wilde 2021, SIAM J. Numer. Anal. 59, 2346; citations from memory) within the core radius of `A`, Gauss-Hermite rules beyond
-/// (Gautschi 1970, SIAM J. Numer. Anal. 7, 187). The block takes the core rule if one of its points needs it: that rule holds in the wings
-/// as well.
+/// (Gautschi 1970, SIAM J. Numer. Anal. 7, 187). A vector takes the rule that its nearest point needs: each rule holds farther out as
+/// well. Vectors that no rule serves go to the scalar path: `|z|` beyond 1e60, beyond 1e10 beside a point within the radius of the first
+/// wing rule, or beyond 1e4 beside one in the core; and the wings of a line with `y < 1e-9`, where `exp(-x²)` counts.
 ///
 /// Accuracy: that of `A`, component by component, for `y = 0` and `1e-8 <= y <= 1e3`, `|x| <= 1e4`: `every_path_meets_the_oracle_table`.
 #[inline(always)]
