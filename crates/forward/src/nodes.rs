@@ -283,27 +283,27 @@ impl Planner {
             let wanted = start + k as f64;
             // u rises with z: Newton's step, held inside the bracket of the last node and the far end.
             let (mut lower, mut upper) = (below, high + (high - low) + cap);
-            for _ in 0..200 {
-                let (u, slope) = map(z);
-                if u < wanted {
-                    lower = z
-                } else {
-                    upper = z
-                }
-                let next = z - (u - wanted) / slope;
-                let next = if next > lower && next < upper {
-                    next
-                } else {
-                    0.5 * (lower + upper)
-                };
-                if (next - z).abs() <= 1e-15 * (high - low) {
+            let mut slope = 1.0;
+            for _ in 0..100 {
+                let (u, steepness) = map(z);
+                slope = steepness;
+                // A node may sit off its place by this part of a step: it is far below the rule's own error.
+                if (u - wanted).abs() < 1e-9 {
                     break;
                 }
-                z = next;
+                if u < wanted {
+                    lower = z;
+                } else {
+                    upper = z;
+                }
+                let next = z - (u - wanted) / slope;
+                z = if next > lower && next < upper { next } else { 0.5 * (lower + upper) };
             }
             plan.place.push(z);
-            plan.weight.push(1.0 / map(z).1);
+            plan.weight.push(1.0 / slope);
             below = z;
+            // One step further at the present density.
+            z += 1.0 / slope;
         }
         plan
     }

@@ -4,6 +4,8 @@ use crate::coordinate::Kind;
 use crate::fit::Found;
 use crate::problem::Problem;
 use backlit_forward::engine::PeakDepth;
+use backlit_forward::planck::{radiance, radiance_slope};
+use backlit_forward::{Background, Layout};
 
 /// The flags of one fit: bits with fixed names.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, Default)]
@@ -112,47 +114,58 @@ fn bounds(problem: &Problem, found: &Found, flags: &mut Flags, messages: &mut Ve
 }
 
 fn contrast(problem: &Problem, found: &Found, flags: &mut Flags, messages: &mut Vec<String>) {
-    use backlit_forward::{Background, Layout};
-    if !matches!(
-        problem.engine.sightline().background,
-        Background::Blackbody { .. }
-    ) || (found.parameters[Layout::DILUTION] - 1.0).abs() > 0.05
-    {
+    if !matches!(problem.engine.sightline().background, Background::Blackbody { .. }) {
         return;
     }
     for (cloud, place) in problem.engine.layout().clouds.iter().enumerate() {
         if found.absent.contains(&cloud) {
             continue;
         }
-        let index_of = |parameter: usize| {
-            found
-                .free
-                .iter()
-                .position(|&i| problem.free[i].parameter == parameter)
+        // Where the gas shows most, its contrast S - I_bg against the contrast's own uncertainty.
+        let strongest = found
+            .depths
+            .iter()
+            .filter(|(depth, _)| depth.cloud == cloud)
+            .max_by(|a, b| a.0.optical_depth.total_cmp(&b.0.optical_depth));
+        let Some((line, _)) = strongest else { continue };
+        let (gas, behind) = (place.temperature(), Layout::BACKGROUND_TEMPERATURE);
+        let at = |parameter: usize| {
+            let temperature_k = found.parameters[parameter].exp();
+            (radiance(line.centre_m, temperature_k), radiance_slope(line.centre_m, temperature_k))
         };
-        let gas = index_of(place.temperature());
-        let behind = index_of(Layout::BACKGROUND_TEMPERATURE);
-        let variance = |a: Option<usize>, b: Option<usize>| match (a, b) {
-            (Some(a), Some(b)) => found.covariance.matrix[(a, b)],
-            _ => 0.0,
-        };
-        let sigma = (variance(gas, gas) + variance(behind, behind) - 2.0 * variance(gas, behind))
-            .max(0.0)
-            .sqrt();
-        let apart = found.parameters[place.temperature()]
-            - found.parameters[Layout::BACKGROUND_TEMPERATURE];
-        if (gas.is_some() || behind.is_some()) && apart.abs() < CONTRAST * sigma
-            || apart.abs() < 1e-9
-        {
+        let ((source, source_slope), (light, light_slope)) = (at(gas), at(behind));
+        let dilution = found.parameters[Layout::DILUTION];
+        let contrast = source - dilution * light;
+        // Within its bounds the gas may be hotter only, or cooler only: then it cannot be as hot.
+        let (low, high) = problem.range_of(gas, &found.parameters);
+        let side = |ln_t: f64| radiance(line.centre_m, ln_t.exp()) > dilution * light;
+        if high > low && side(low) == side(high) {
+            continue;
+        }
+        let slopes: Vec<(usize, f64)> = [
+            (gas, source_slope),
+            (behind, -dilution * light_slope),
+            (Layout::DILUTION, -light),
+        ]
+        .into_iter()
+        .filter_map(|(parameter, slope)| {
+            let position = found.free.iter().position(|&i| problem.free[i].parameter == parameter)?;
+            Some((position, slope))
+        })
+        .collect();
+        let mut variance = 0.0;
+        for &(a, slope_a) in &slopes {
+            for &(b, slope_b) in &slopes {
+                variance += slope_a * slope_b * found.covariance.matrix[(a, b)];
+            }
+        }
+        let sigma = variance.max(0.0).sqrt();
+        if contrast.abs() < CONTRAST * sigma || contrast.abs() < 1e-9 * light {
             flags.raise(Flags::NO_CONTRAST);
             messages.push(format!(
-                "cloud {} is within {:.1} standard deviations of the background's temperature",
+                "cloud {} is as hot as the background within {:.1} standard deviations",
                 cloud + 1,
-                if sigma > 0.0 {
-                    apart.abs() / sigma
-                } else {
-                    0.0
-                }
+                if sigma > 0.0 { contrast.abs() / sigma } else { 0.0 }
             ));
         }
     }

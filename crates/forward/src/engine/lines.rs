@@ -148,7 +148,7 @@ pub fn update(
         .iter()
         .fold(0.0_f64, |most, line| most.max(line.visibility));
     // Rounded, so that the reach of a line does not follow every small change of the strongest one.
-    let floor = engine.sightline.tolerance * 0.3 * strongest.max(1e-300).log2().floor().exp2();
+    let floor = engine.sightline.tolerance * 0.2 * strongest.max(1e-300).log2().floor().exp2();
     lines.retain_mut(|line| {
         let width_m = line.centre_m * line.relative_width;
         let reach = reach(

@@ -86,7 +86,7 @@ fn scene(
             species: vec![species.clone()],
             own_doppler_temperature: true,
         }],
-        tolerance: 1e-6,
+        tolerance: 1e-5,
     };
     let layout = sightline.layout();
     let mut parameters = vec![0.0; layout.len()];

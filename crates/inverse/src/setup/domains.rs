@@ -96,6 +96,6 @@ pub(super) const TOLERANCE: Domain = Domain {
     quantity: "model tolerance",
     unit: "",
     allowed: "1e-9..=1e-2",
-    hint: "relative to the highest line contrast; the default 1e-6 is finer than most data",
+    hint: "relative to the highest line contrast; the default 1e-5 is finer than most data",
     holds: |x| (1e-9..=1e-2).contains(&x),
 };

@@ -19,7 +19,7 @@ use super::{
 };
 
 /// The accuracy of the model where the setup says nothing, relative to the highest line contrast.
-const DEFAULT_TOLERANCE: f64 = 1e-6;
+const DEFAULT_TOLERANCE: f64 = 1e-5;
 
 impl Setup {
     /// Reads a setup file.

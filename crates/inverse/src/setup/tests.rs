@@ -113,7 +113,7 @@ fn what_the_file_leaves_out_has_a_harmless_value() {
     assert_eq!(setup.instrument, Instrument::None);
     assert_eq!(setup.background.dilution, Value::Known(1.0));
     assert_eq!(setup.background.shape_terms, 0);
-    assert_eq!(setup.tolerance, 1e-6);
+    assert_eq!(setup.tolerance, 1e-5);
     assert!(!setup.fit.robust);
 }
 
