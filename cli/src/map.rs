@@ -130,9 +130,10 @@ impl Map {
         }
 
         interrupt::listen();
+        let reversed = frame.axis.is_reversed();
         let progress = Progress::new(console, total, total - to_do);
         let began = Instant::now();
-        let count = fit_tiles(&cube, &frame, &problem, open, pool, |tile, maps| {
+        let count = fit_tiles(&cube, reversed, &problem, open, pool, |tile, maps| {
             writer.put(tile.index, &maps.values, &maps.flags)?;
             progress.advance(tile.pixels() as u64);
             Ok(())
@@ -261,7 +262,7 @@ impl Count {
 /// tiles a thread. Each tile is fitted by one thread from its own data alone: the answer does not depend on who does it.
 fn fit_tiles(
     cube: &Cube,
-    frame: &Frame,
+    reversed: bool,
     problem: &Problem,
     tiles: Vec<Tile>,
     pool: &ThreadPool,
@@ -295,7 +296,7 @@ fn fit_tiles(
                     || (to_write.clone(), problem.workspace()),
                     |(to_write, workspace), read| {
                         let fitted = read.map(|(tile, data)| {
-                            let maps = tile_fit::fit(problem, workspace, frame, &tile, data);
+                            let maps = tile_fit::fit(problem, workspace, reversed, &tile, data);
                             (tile, maps)
                         });
                         // As above: nobody listens only after a failure that is already reported.

@@ -6,7 +6,7 @@ use std::str::FromStr;
 
 use backlit_cubes::{CubeLayout, CubeUncertainty, CubeWriter, Spectrum, Tile};
 use backlit_inverse::Problem;
-use backlit_inverse::setup::Setup;
+use backlit_inverse::setup::{Light, Setup};
 use backlit_species::Catalogue;
 use clap::Args;
 use ndarray::Array2;
@@ -63,8 +63,8 @@ pub struct Predict {
 
     /// Add Gaussian noise of this ratio to the peak
     ///
-    /// 1 sigma is the highest intensity of the background divided by this; a column `uncertainty` (in a cube the
-    /// dataset) says so. Example: 50
+    /// 1 sigma is the highest intensity of the background divided by this, in a cube that of its middling pixel
+    /// (median); a column `uncertainty`, in a cube the dataset, says so. Example: 50
     #[arg(long, value_name = "S/N", value_parser = positive)]
     noise: Option<f64>,
 
@@ -167,27 +167,31 @@ impl Predict {
             Problem::new(setup, axis, unit, Catalogue::builtin(), measured.as_deref())
         };
         let gas = problem(&setup)?;
-        let noise = match self.noise {
-            None => None,
-            Some(signal_to_noise) => {
-                let mut bare = setup.clone();
-                bare.clouds.clear();
-                // Where nothing shines behind the gas, its own peak takes the place of the background's.
-                let peak = match setup.background.light {
-                    backlit_inverse::setup::Light::Dark => largest(&gas.predict()?),
-                    _ => largest(&problem(&bare)?.predict()?),
-                };
-                Some(Noise {
-                    sigma: peak / signal_to_noise,
-                    seed: self.seed,
-                })
-            }
-        };
+        // The light without the gas is what noise is measured by; where nothing shines, the gas itself.
+        let mut bare = setup.clone();
+        if bare.background.light != Light::Dark {
+            bare.clouds.clear();
+        }
+        let bare = problem(&bare)?;
         match (self.cube, &self.vary, &self.output) {
             (Some(shape), Some(vary), Some(path)) => {
-                self.write_cube(console, &gas, &place, noise, shape, vary, path)
+                let models = CubeModels { gas, bare };
+                self.write_cube(console, &models, &place, shape, vary, path)
             }
-            _ => self.write_spectrum(console, &gas, place, noise),
+            _ => {
+                let noise = match self.noise {
+                    Some(ratio) => Some(self.noise_of(ratio, largest(&bare.predict()?))),
+                    None => None,
+                };
+                self.write_spectrum(console, &gas, place, noise)
+            }
+        }
+    }
+
+    fn noise_of(&self, ratio: f64, peak: f64) -> Noise {
+        Noise {
+            sigma: peak / ratio,
+            seed: self.seed,
         }
     }
 
@@ -269,20 +273,22 @@ impl Predict {
         console.print(&spectrum.to_csv())
     }
 
-    #[allow(clippy::too_many_arguments)]
     fn write_cube(
         &self,
         console: &Console,
-        problem: &Problem,
+        models: &CubeModels,
         place: &Place,
-        noise: Option<Noise>,
         shape: CubeShape,
         vary: &Path,
         path: &Path,
     ) -> Result<(), Failure> {
         let CubeShape { ny, nx } = shape;
         let n = place.wavelength_m.len();
+        let problem = &models.gas;
         let values = PixelValues::read(vary, (ny, nx), problem.quantities(), &problem.starts())?;
+        let noise = self
+            .noise
+            .map(|ratio| self.noise_of(ratio, models.middling_peak(&values)));
         let layout = CubeLayout {
             ny,
             nx,
@@ -363,6 +369,40 @@ impl Predict {
         }
         console.tell(&format!("wrote {} ({size})", path.display()));
         Ok(())
+    }
+}
+
+/// The models of a cube's pixels.
+struct CubeModels {
+    gas: Problem,
+    /// The light without the gas, or the gas itself in front of nothing.
+    bare: Problem,
+}
+
+impl CubeModels {
+    /// The median over the pixels of the highest intensity of the light without the gas.
+    fn middling_peak(&self, values: &PixelValues) -> f64 {
+        let position = |name: &str| self.gas.quantities().iter().position(|q| q.name == name);
+        // The open values of the bare model are some of those of the whole one.
+        let chosen: Vec<usize> = self
+            .bare
+            .quantities()
+            .iter()
+            .filter_map(|quantity| position(&quantity.name))
+            .collect();
+        let mut peaks: Vec<f64> = values
+            .all()
+            .par_iter()
+            .map_init(
+                || self.bare.workspace(),
+                |workspace, values| {
+                    let own: Vec<f64> = chosen.iter().map(|i| values[*i]).collect();
+                    largest(&self.bare.predict_at(workspace, &own))
+                },
+            )
+            .collect();
+        peaks.sort_by(f64::total_cmp);
+        peaks.get(peaks.len() / 2).copied().unwrap_or(0.0)
     }
 }
 

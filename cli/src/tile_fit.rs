@@ -1,11 +1,10 @@
 //! The pixels of one tile, one after the other.
 
-use backlit_cubes::{Quantity as MapQuantity, Tile, TileData};
+use backlit_cubes::{Quantity as MapQuantity, Tile, TileData, TileUncertainty};
 use backlit_inverse::{Fit, Observation, Problem, Quantity, Workspace};
-use ndarray::{Array2, ArrayView1};
+use ndarray::{Array2, s};
 
 use crate::fit::is_column;
-use crate::observed::Frame;
 
 /// The answers of one tile, as the maps store wants them.
 pub struct TileMaps {
@@ -57,7 +56,7 @@ pub fn map_quantities(quantities: &[Quantity]) -> Vec<MapQuantity> {
 pub fn fit(
     problem: &Problem,
     workspace: &mut Workspace,
-    frame: &Frame,
+    reversed: bool,
     tile: &Tile,
     data: TileData,
 ) -> TileMaps {
@@ -66,22 +65,22 @@ pub fn fit(
     let mut values = Array2::from_elem((maps.len(), tile.pixels()), f64::NAN);
     let mut flags = vec![0; tile.pixels()];
     let mut fitted = 0;
+    let data = if reversed { reverse(data) } else { data };
     let mut near: Option<Fit> = None;
     for pixel in serpentine(tile) {
-        let row = |values: ArrayView1<'_, f64>| frame.rising(&values.to_vec());
-        let intensity = row(data.intensity.row(pixel));
-        let uncertainty = data.uncertainty.row(pixel).map(row);
-        let mask = frame.rising(&data.mask.row(pixel).to_vec());
+        let (intensity, mask) = (data.intensity.row(pixel), data.mask.row(pixel));
+        let uncertainty = data.uncertainty.row(pixel);
         let observation = Observation {
-            intensity: &intensity,
-            uncertainty: uncertainty.as_deref(),
-            mask: &mask,
+            // Rows of the reader are contiguous; an empty slice would only ever mean too little data.
+            intensity: intensity.to_slice().unwrap_or_default(),
+            uncertainty: uncertainty.map(|row| row.to_slice().unwrap_or_default()),
+            mask: mask.to_slice().unwrap_or_default(),
         };
         let answer = problem.fit(workspace, &observation, near.as_ref());
         record(quantities, &answer, &mut values, pixel);
         flags[pixel] = answer.flags.0;
         fitted += u64::from(answer.values.iter().any(|value| value.is_finite()));
-        if answer.values.iter().all(|value| value.is_finite()) {
+        if answer.flags.0 == 0 {
             near = Some(answer);
         }
     }
@@ -89,6 +88,27 @@ pub fn fit(
         values,
         flags,
         fitted,
+    }
+}
+
+/// The same spectra with the channels in the opposite order.
+fn reverse(data: TileData) -> TileData {
+    fn rows<T: Copy>(values: &Array2<T>) -> Array2<T> {
+        values
+            .slice(s![.., ..;-1])
+            .as_standard_layout()
+            .into_owned()
+    }
+    TileData {
+        intensity: rows(&data.intensity),
+        uncertainty: match data.uncertainty {
+            TileUncertainty::None => TileUncertainty::None,
+            TileUncertainty::Channels(row) => {
+                TileUncertainty::Channels(row.iter().rev().copied().collect())
+            }
+            TileUncertainty::Pixels(values) => TileUncertainty::Pixels(rows(&values)),
+        },
+        mask: rows(&data.mask),
     }
 }
 

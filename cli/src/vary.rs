@@ -89,6 +89,11 @@ impl PixelValues {
         self.rows.get(y * self.nx + x)?.as_deref()
     }
 
+    /// The values of all pixels that have any.
+    pub fn all(&self) -> Vec<&[f64]> {
+        self.rows.iter().flatten().map(AsRef::as_ref).collect()
+    }
+
     /// Pixels that have values.
     pub fn filled(&self) -> usize {
         self.rows.iter().flatten().count()

@@ -207,7 +207,7 @@ fn an_interrupted_run_says_how_to_continue_and_continues_to_the_same_maps() {
         "1",
     ];
     let mut command = desk.command(&arguments);
-    let child = command
+    let mut child = command
         .stdout(Stdio::piped())
         .stderr(Stdio::piped())
         .spawn()
@@ -225,8 +225,9 @@ fn an_interrupted_run_says_how_to_continue_and_continues_to_the_same_maps() {
         }
         assert!(
             began.elapsed() < Duration::from_secs(120),
-            "no tile was finished"
+            "no tile is done"
         );
+        assert!(child.try_wait().unwrap().is_none(), "it ended by itself");
     }
     let pid = child.id().to_string();
     assert!(
