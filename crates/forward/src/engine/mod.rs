@@ -141,7 +141,7 @@ impl Engine {
             stride,
             rows: vec![0.0; (self.sightline.channels.len() + 2 * LANES) * stride],
             continuum: ContinuumColumns::default(),
-            planner: Planner::new(0.3 * self.sightline.tolerance),
+            planner: Planner::new(0.1 * self.sightline.tolerance),
             lines: Vec::new(),
             groups: groups::Groups::default(),
             key: Vec::new(),
