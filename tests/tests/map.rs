@@ -158,6 +158,41 @@ fn the_maps_do_not_depend_on_the_number_of_threads() {
 }
 
 #[test]
+fn falling_wavelengths_give_the_same_maps() {
+    let desk = desk(2, 5);
+    let wavelengths: Vec<f64> = (0..101).map(|i| 588.0 + 0.03 * f64::from(i)).collect();
+    let csv = |wavelengths: &mut dyn Iterator<Item = &f64>| {
+        let rows: String = wavelengths.map(|nm| format!("{nm},1\n")).collect();
+        format!("# medium: vacuum\nwavelength_nm,intensity\n{rows}")
+    };
+    desk.write("rising.csv", csv(&mut wavelengths.iter()));
+    desk.write("falling.csv", csv(&mut wavelengths.iter().rev()));
+    for order in ["rising", "falling"] {
+        let (like, cube) = (format!("{order}.csv"), format!("{order}.h5"));
+        let predict = [
+            "predict", "s.toml", "--like", &like, "--noise", "100", "--cube", "2,5", "--vary",
+            "v.csv", "-o", &cube,
+        ];
+        desk.run(&predict).done();
+        let maps = format!("{order}-maps.h5");
+        desk.run(&["map", &cube, "--setup", "s.toml", "-o", &maps])
+            .done();
+    }
+    let file = hdf5::File::open(desk.path("falling.h5")).unwrap();
+    let nm = file
+        .dataset("wavelength")
+        .unwrap()
+        .read_raw::<f64>()
+        .unwrap();
+    assert!(nm[0] > nm[100], "the cube keeps the order of its model");
+    let (rising, falling) = (
+        maps(&desk, "rising-maps.h5"),
+        maps(&desk, "falling-maps.h5"),
+    );
+    assert!(same(&rising, &falling));
+}
+
+#[test]
 fn json_is_one_summary() {
     let desk = desk(2, 3);
     let outcome = desk.run(&[
