@@ -149,7 +149,8 @@ def draw_spectra(slots, cube_path, pixels):
     windows = np.split(np.arange(len(wavelength)), gaps + 1)
     names = ["Ca II K, H", "Na I D", "K I", "Ca II triplet"]
     for axes, window, name in zip(slots, windows, names):
-        inner = window[2:-2]
+        # The channels at the ends of a window are not in use and have no data.
+        inner = [k for k in window if all(spectrum is None or np.isfinite(spectrum[k]) for spectrum in spectra)]
         for spectrum, colour, label, lift in zip(spectra, SPECTRUM_COLOURS, labels, (-0.25, 0.0, 0.25)):
             if spectrum is None:
                 continue

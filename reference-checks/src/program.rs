@@ -20,6 +20,8 @@ impl Case {
 
     /// The spectrum that the program predicts, in [`UNIT`].
     pub fn predict(&self) -> Vec<f64> {
-        self.problem().predict().unwrap_or_else(|error| panic!("{}: {error}", self.setup.display()))
+        self.problem()
+            .predict()
+            .unwrap_or_else(|error| panic!("{}: {error}", self.setup.display()))
     }
 }

@@ -135,7 +135,7 @@ fn one_thin_line_cannot_tell_temperature_from_column() {
         &scene,
         &scene,
         (&one_line(), &one_line()),
-        50.0,
+        300.0,
     );
     assert_flagged("one thin line", &fits, &["degenerate"]);
 }
@@ -186,7 +186,13 @@ fn thin_gas_cannot_tell_its_column_from_the_dilution_of_a_light_of_unknown_stren
         dilution: 0.5,
         ..scene(2500.0, 2e11)
     };
-    let fits = fits("dilution", &scene, &scene, (&one_line(), &one_line()), 50.0);
+    let fits = fits(
+        "dilution",
+        &scene,
+        &scene,
+        (&one_line(), &one_line()),
+        300.0,
+    );
     assert_flagged("one thin line and dilution", &fits, &["degenerate"]);
 }
 

@@ -98,7 +98,11 @@ fn check(name: &str, scene: &Scene, seed: u64) {
         .iter()
         .filter(|fit| !fit.flags.names().is_empty())
         .count();
-    println!("{name}: {flagged} of {DRAWS} flagged");
+    let reasons = fits
+        .iter()
+        .find(|fit| !fit.flags.names().is_empty())
+        .map(|fit| &fit.messages);
+    println!("{name}: {flagged} of {DRAWS} flagged, for example {reasons:?}");
     assert!(
         flagged <= DRAWS / 50,
         "{name}: {flagged} of {DRAWS} good spectra are flagged (allowed: 2 %)"
@@ -167,10 +171,10 @@ fn scene(gas_k: f64, background_k: f64, column_cm2: f64) -> Scene {
 
 #[test]
 fn absorption_is_measured_as_well_as_the_noise_allows() {
-    check("absorption", &scene(3000.0, 5200.0, 1.5e14), 11);
+    check("absorption", &scene(3000.0, 5200.0, 6e13), 11);
 }
 
 #[test]
 fn emission_is_measured_as_well_as_the_noise_allows() {
-    check("emission", &scene(6500.0, 4200.0, 3e14), 12);
+    check("emission", &scene(6500.0, 4200.0, 2.5e13), 12);
 }
