@@ -13,7 +13,7 @@ matplotlib.use("Agg")
 import matplotlib.pyplot as plt
 import numpy as np
 from compare import read_maps
-from matplotlib.colors import BoundaryNorm, ListedColormap
+from matplotlib.colors import BoundaryNorm, ListedColormap, LogNorm, Normalize
 from matplotlib.patches import Patch
 
 INK = "#1b2430"
@@ -46,43 +46,49 @@ PANELS = [
     ("cloud1_log10_column_Na_I", "Na I column", "log$_{10}$ (cm$^{-2}$)", "viridis"),
     ("cloud1_log10_column_K_I", "K I column", "log$_{10}$ (cm$^{-2}$)", "viridis"),
 ]
-# Shown in this order of precedence.
+# Shown in this order of precedence; the first two are for pixels where no column at all was found.
+NOTHING = ("no gas seen", "#c8ccd2")
 FLAGS = [
-    ("not_detected", "nothing detected", "#c8ccd2"),
     ("no_contrast", "as hot as the stars", "#cc79a7"),
     ("at_bound", "at a bound", "#e69f00"),
-    ("saturated", "saturated", "#56b4e9"),
     ("degenerate", "cannot be told apart", "#8c6bb1"),
+    ("poor_fit", "poor fit", "#d55e00"),
+    ("saturated", "saturated", "#56b4e9"),
+    ("not_detected", "a species not detected", "#b8d8c8"),
 ]
 
 
-def draw_map(axes, figure, values, title, label, colours, centred=False):
+def draw_map(axes, figure, values, title, label, colours, centred=False, logarithmic=False):
     """One map with its colour bar; pixels without an answer stay pale."""
     shown = np.ma.masked_invalid(values)
     inside = shown.compressed()
-    low, high = np.percentile(inside, [1, 99]) if inside.size else (0, 1)
+    # A few wild pixels must not take the colours of all others.
+    low, high = np.percentile(inside, [2, 98]) if inside.size else (0, 1)
     if centred:
         high = max(abs(low), abs(high))
         low = -high
     axes.set_facecolor(PALE)
-    image = axes.imshow(shown, origin="lower", cmap=colours, vmin=low, vmax=high, interpolation="nearest")
+    norm = LogNorm(low, high) if logarithmic else Normalize(low, high)
+    image = axes.imshow(shown, origin="lower", cmap=colours, norm=norm, interpolation="nearest")
     axes.set_title(title)
     axes.set_xticks([])
     axes.set_yticks([])
     bar = figure.colorbar(image, ax=axes, orientation="horizontal", pad=0.03, shrink=0.94, aspect=28)
     bar.set_label(label, labelpad=2)
     bar.outline.set_linewidth(0.4)
-    bar.locator = matplotlib.ticker.MaxNLocator(5)
-    bar.update_ticks()
+    if not logarithmic:
+        bar.locator = matplotlib.ticker.MaxNLocator(5)
+        bar.update_ticks()
 
 
-def draw_flags(axes, flags, bits):
-    """Which pixels to trust, and why not."""
-    state = np.full(flags.shape, len(FLAGS) + 1)
+def draw_flags(axes, flags, bits, nothing):
+    """Which pixels to trust, and why not; `nothing`: where no column was found."""
+    legend = [("no flag", "#1f7a5c"), NOTHING, *[(label, colour) for _, label, colour in FLAGS], ("other", "#000000")]
+    state = np.full(flags.shape, len(legend) - 1)
     state[flags == 0] = 0
-    for place, (name, _, _) in reversed(list(enumerate(FLAGS, start=1))):
+    for place, (name, _, _) in reversed(list(enumerate(FLAGS, start=2))):
         state[flags & bits.get(name, 0) > 0] = place
-    legend = [("no flag", "#1f7a5c"), *[(label, colour) for _, label, colour in FLAGS], ("other", "#000000")]
+    state[nothing] = 1
     present = [place for place in range(len(legend)) if np.any(state == place)]
     image = axes.imshow(
         state,
@@ -104,12 +110,14 @@ def draw_flags(axes, flags, bits):
     bar.ax.legend(
         handles=patches,
         loc="upper center",
-        bbox_to_anchor=(0.5, 1.6),
+        bbox_to_anchor=(0.5, 2.2),
         ncols=2,
         frameon=False,
-        fontsize=8,
+        fontsize=7.5,
         handlelength=1.1,
-        columnspacing=1.2,
+        handleheight=0.6,
+        labelspacing=0.25,
+        columnspacing=0.9,
     ).set_in_layout(False)
 
 
@@ -117,6 +125,9 @@ def choose_pixels(maps, bits):
     """One pixel each in absorption, as hot as its background, and in emission."""
     contrast = maps["cloud1_temperature"] - maps["background_temperature"]
     column = maps["cloud1_log10_column_Ca_II"]
+    # How many pixels around show gas: what hides in their middle is hidden by its temperature.
+    found = np.pad(np.isfinite(column), 3).astype(int)
+    around = np.lib.stride_tricks.sliding_window_view(found, (7, 7)).sum(axis=(2, 3))
     good = (maps["flags"] == 0) & np.isfinite(contrast)
     chosen = []
     for wanted, where in [
@@ -128,7 +139,7 @@ def choose_pixels(maps, bits):
             chosen.append(None)
             continue
         if wanted is None:
-            score = np.where(where, -np.nan_to_num(column, nan=0.0), np.inf)
+            score = np.where(where, -around, np.inf)
         else:
             # Deep contrast and much gas.
             score = np.where(where, wanted() / 1000 - 1.5 * np.nan_to_num(column, nan=0.0), np.inf)
@@ -149,8 +160,8 @@ def draw_spectra(slots, cube_path, pixels):
     windows = np.split(np.arange(len(wavelength)), gaps + 1)
     names = ["Ca II K, H", "Na I D", "K I", "Ca II triplet"]
     for axes, window, name in zip(slots, windows, names):
-        # The channels at the ends of a window are not in use and have no data.
-        inner = [k for k in window if all(spectrum is None or np.isfinite(spectrum[k]) for spectrum in spectra)]
+        # The channels at the ends of a window reach half-way to the next one and are not in use.
+        inner = window[2:-2]
         for spectrum, colour, label, lift in zip(spectra, SPECTRUM_COLOURS, labels, (-0.25, 0.0, 0.25)):
             if spectrum is None:
                 continue
@@ -165,9 +176,7 @@ def draw_spectra(slots, cube_path, pixels):
     for axes in slots[1:]:
         axes.sharey(slots[0])
         axes.tick_params(labelleft=False)
-    middle = np.mean(wavelength[windows[0]])
-    for label, colour, height in zip(labels, SPECTRUM_COLOURS, (0.82, 1.07, 1.32)):
-        slots[0].text(middle, height, label, color=colour, fontsize=8, ha="center", va="center")
+    slots[-1].legend(loc="upper right", frameon=False, fontsize=8, reverse=True, labelcolor="linecolor")
 
 
 def main(cube_path, maps_path, picture_path):
@@ -182,12 +191,13 @@ def main(cube_path, maps_path, picture_path):
     for place, (name, title, label, colours) in enumerate(PANELS):
         axes = figure.add_subplot(grid[place // 4, place % 4])
         first = first or axes
-        draw_map(axes, figure, maps[name], title, label, colours, centred=name.endswith("velocity"))
+        draw_map(axes, figure, maps[name], title, label, colours, name.endswith("velocity"), name.endswith("sigma"))
     for pixel, colour in zip(pixels, SPECTRUM_COLOURS):
         if pixel is not None:
             first.plot(pixel[1], pixel[0], "o", ms=7, mfc="none", mec="white", mew=2.6)
             first.plot(pixel[1], pixel[0], "o", ms=7, mfc="none", mec=colour, mew=1.3)
-    draw_flags(figure.add_subplot(grid[1, 3]), maps["flags"], bits)
+    nothing = np.all([np.isnan(maps[name]) for name, *_ in PANELS if "column" in name], axis=0)
+    draw_flags(figure.add_subplot(grid[1, 3]), maps["flags"], bits, nothing)
     draw_spectra([figure.add_subplot(grid[2, column]) for column in range(4)], cube_path, pixels)
     figure.suptitle(
         "The Kestrel Veil, an invented nebula in front of a star field", x=0.012, ha="left", fontsize=13, weight="bold"
