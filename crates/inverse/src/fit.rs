@@ -44,6 +44,8 @@ pub(crate) struct Found {
     pub absent: Vec<usize>,
     /// Free columns that are not detected.
     pub absent_columns: Vec<usize>,
+    /// Other minima that describe the data as well.
+    pub rivals: Vec<Vec<f64>>,
 }
 
 /// Evaluations that each start gets before the field is narrowed, and the best few after it.
@@ -53,6 +55,8 @@ const LAST_ROUND: u32 = 120;
 const FINALISTS: usize = 3;
 /// Chi-square within this many of its standard deviations says that a neighbour's answer fits here too.
 const ACCEPTABLE: f64 = 3.0;
+/// A minimum whose chi-square is this little above the least describes the data as well.
+const AS_GOOD: f64 = 4.0;
 /// Standard deviations by which a line must stand out to count as seen.
 const SEEN: f64 = 3.0;
 
@@ -81,7 +85,11 @@ impl Problem {
             return self.nothing(flags, messages);
         }
         let degrees = (usable - self.free.len()) as f64;
-        let (mut parameters, mut descent) = self.best(workspace, near, degrees);
+        let Best {
+            mut parameters,
+            mut descent,
+            rivals,
+        } = self.best(workspace, near, degrees);
         let absent = self.detections(workspace, &parameters, descent.chi_square, &mut messages);
         let mut upper = vec![f64::NAN; self.free.len()];
         let clouds = self.engine.sightline().clouds.len();
@@ -157,6 +165,7 @@ impl Problem {
             depths,
             absent: absent.clouds,
             absent_columns: absent.columns,
+            rivals,
         };
         verdict::judge(self, &found, &mut answer.flags, &mut answer.messages);
         answer.parameters = found.parameters;
@@ -222,63 +231,64 @@ impl Problem {
         count
     }
 
-    /// The best minimum that any start leads to.
-    fn best(
-        &self,
-        workspace: &mut Workspace,
-        near: Option<&Fit>,
-        degrees: f64,
-    ) -> (Vec<f64>, Descent) {
-        let all: Vec<usize> = (0..self.free.len()).collect();
+    /// The best minimum that any start leads to, and the others that fit as well.
+    fn best(&self, workspace: &mut Workspace, near: Option<&Fit>, degrees: f64) -> Best {
         let mut field: Vec<(Vec<f64>, Descent)> = Vec::new();
         if let Some(near) = near {
             let mut parameters = near.parameters.clone();
             self.clamp(&mut parameters);
-            let descent = self.descend_with(workspace, &all, &mut parameters, LAST_ROUND);
+            let descent = self.descend_with(workspace, &mut parameters, LAST_ROUND);
             let acceptable = descent.chi_square < degrees + ACCEPTABLE * (2.0 * degrees).sqrt();
             if descent.stop.is_minimum() && acceptable {
-                return (parameters, descent);
+                return Best {
+                    parameters,
+                    descent,
+                    rivals: Vec::new(),
+                };
             }
             field.push((parameters, descent));
         }
         for mut start in start::starts(self, workspace) {
-            let descent = self.descend_with(workspace, &all, &mut start, FIRST_ROUND);
+            let descent = self.descend_with(workspace, &mut start, FIRST_ROUND);
             field.push((start, descent));
         }
         field.sort_by(|a, b| a.1.chi_square.total_cmp(&b.1.chi_square));
         field.truncate(FINALISTS);
-        let mut best: Option<(Vec<f64>, Descent)> = None;
-        for (mut parameters, first) in field {
-            let descent = if first.stop.is_minimum() {
-                first
-            } else {
-                self.descend_with(workspace, &all, &mut parameters, LAST_ROUND)
-            };
-            if best
-                .as_ref()
-                .is_none_or(|(_, least)| descent.chi_square < least.chi_square)
-            {
-                best = Some((parameters, descent));
+        for (parameters, descent) in &mut field {
+            if !descent.stop.is_minimum() {
+                *descent = self.descend_with(workspace, parameters, LAST_ROUND);
             }
         }
-        best.unwrap_or_else(|| {
+        field.sort_by(|a, b| a.1.chi_square.total_cmp(&b.1.chi_square));
+        let mut ranked = field.into_iter();
+        let Some((parameters, descent)) = ranked.next() else {
             let stop = StopReason::NoData;
-            (
-                self.middle.clone(),
-                Descent {
-                    chi_square: f64::NAN,
-                    evaluations: 0,
-                    stop,
-                    promised: f64::NAN,
-                },
-            )
-        })
+            let descent = Descent {
+                chi_square: f64::NAN,
+                evaluations: 0,
+                stop,
+                promised: f64::NAN,
+            };
+            return Best {
+                parameters: self.middle.clone(),
+                descent,
+                rivals: Vec::new(),
+            };
+        };
+        let rivals = ranked
+            .filter(|(_, other)| other.chi_square - descent.chi_square < AS_GOOD)
+            .map(|(parameters, _)| parameters)
+            .collect();
+        Best {
+            parameters,
+            descent,
+            rivals,
+        }
     }
 
     fn descend_with(
         &self,
         workspace: &mut Workspace,
-        _all: &[usize],
         parameters: &mut [f64],
         budget: u32,
     ) -> Descent {
@@ -525,6 +535,14 @@ impl Problem {
             parameters: self.middle.clone(),
         }
     }
+}
+
+/// Where the starts have led.
+struct Best {
+    parameters: Vec<f64>,
+    descent: Descent,
+    /// Other minima that describe the data as well.
+    rivals: Vec<Vec<f64>>,
 }
 
 /// What could be left out.

@@ -485,7 +485,11 @@ impl<'a> Table<'a> {
         } else if let Value::Known(known) = value {
             // A known zero of a logarithmic quantity (no gas of a species) is a very small number.
             let coordinate = kind.coordinate(known);
-            let coordinate = if coordinate == f64::NEG_INFINITY { -700.0 } else { coordinate };
+            let coordinate = if coordinate == f64::NEG_INFINITY {
+                -700.0
+            } else {
+                coordinate
+            };
             self.middle[parameter] = coordinate;
             self.low[parameter] = coordinate;
             self.high[parameter] = coordinate;

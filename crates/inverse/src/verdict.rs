@@ -68,6 +68,8 @@ const TIED: f64 = 0.99;
 const LOOSE: f64 = 0.1;
 /// A correlation that no reader should overlook however small the standard deviations are.
 const INSEPARABLE: f64 = 0.9995;
+/// Standard deviation, in e-folds, of a value that is as good as unknown.
+const WIDE_OPEN: f64 = 0.7;
 /// Gas and background closer than this many standard deviations are as good as equal.
 const CONTRAST: f64 = 3.0;
 /// Optical depth of the faintest line from which a column is a guess at any noise.
@@ -91,6 +93,7 @@ pub(crate) fn judge(
     contrast(problem, found, flags, messages);
     saturation(problem, found, flags, messages);
     ties(problem, found, flags, messages);
+    open_values(problem, found, flags, messages);
 }
 
 fn bounds(problem: &Problem, found: &Found, flags: &mut Flags, messages: &mut Vec<String>) {
@@ -114,7 +117,10 @@ fn bounds(problem: &Problem, found: &Found, flags: &mut Flags, messages: &mut Ve
 }
 
 fn contrast(problem: &Problem, found: &Found, flags: &mut Flags, messages: &mut Vec<String>) {
-    if !matches!(problem.engine.sightline().background, Background::Blackbody { .. }) {
+    if !matches!(
+        problem.engine.sightline().background,
+        Background::Blackbody { .. }
+    ) {
         return;
     }
     for (cloud, place) in problem.engine.layout().clouds.iter().enumerate() {
@@ -131,7 +137,10 @@ fn contrast(problem: &Problem, found: &Found, flags: &mut Flags, messages: &mut 
         let (gas, behind) = (place.temperature(), Layout::BACKGROUND_TEMPERATURE);
         let at = |parameter: usize| {
             let temperature_k = found.parameters[parameter].exp();
-            (radiance(line.centre_m, temperature_k), radiance_slope(line.centre_m, temperature_k))
+            (
+                radiance(line.centre_m, temperature_k),
+                radiance_slope(line.centre_m, temperature_k),
+            )
         };
         let ((source, source_slope), (light, light_slope)) = (at(gas), at(behind));
         let dilution = found.parameters[Layout::DILUTION];
@@ -149,7 +158,10 @@ fn contrast(problem: &Problem, found: &Found, flags: &mut Flags, messages: &mut 
         ]
         .into_iter()
         .filter_map(|(parameter, slope)| {
-            let position = found.free.iter().position(|&i| problem.free[i].parameter == parameter)?;
+            let position = found
+                .free
+                .iter()
+                .position(|&i| problem.free[i].parameter == parameter)?;
             Some((position, slope))
         })
         .collect();
@@ -165,7 +177,11 @@ fn contrast(problem: &Problem, found: &Found, flags: &mut Flags, messages: &mut 
             messages.push(format!(
                 "cloud {} is as hot as the background within {:.1} standard deviations",
                 cloud + 1,
-                if sigma > 0.0 { contrast.abs() / sigma } else { 0.0 }
+                if sigma > 0.0 {
+                    contrast.abs() / sigma
+                } else {
+                    0.0
+                }
             ));
         }
     }
@@ -238,6 +254,47 @@ fn ties(problem: &Problem, found: &Found, flags: &mut Flags, messages: &mut Vec<
             "only a combination is fixed of: {}",
             names.join(", ")
         ));
+    }
+}
+
+/// Raises `degenerate` for values that the data leave open over much of their range, alone or because
+/// another minimum fits as well.
+fn open_values(problem: &Problem, found: &Found, flags: &mut Flags, messages: &mut Vec<String>) {
+    let quantities = problem.quantities();
+    for (position, &i) in found.free.iter().enumerate() {
+        let value = &problem.free[i];
+        let hidden = value
+            .cloud
+            .is_some_and(|cloud| found.absent.contains(&cloud));
+        if hidden || found.absent_columns.contains(&i) {
+            continue;
+        }
+        let at = found.parameters[value.parameter];
+        let sigma = found.covariance.sigma(position);
+        let enough = match value.kind {
+            Kind::Temperature | Kind::Column | Kind::Scale => {
+                WIDE_OPEN.min(0.5 * (value.high - value.low))
+            }
+            Kind::Dilution => 0.3,
+            // A width of nothing is a bound, a velocity is searched for: neither is a matter of degeneracy.
+            _ => continue,
+        };
+        if sigma > enough {
+            flags.raise(Flags::DEGENERATE);
+            messages.push(format!("{} is left open by the data", quantities[i].name));
+        } else if let Some(rival) = found
+            .rivals
+            .iter()
+            .find(|rival| (rival[value.parameter] - at).abs() > (5.0 * sigma).max(0.5 * enough))
+        {
+            flags.raise(Flags::DEGENERATE);
+            messages.push(format!(
+                "{} = {:.5} {} fits as well",
+                quantities[i].name,
+                value.kind.reported(rival[value.parameter]),
+                quantities[i].units
+            ));
+        }
     }
 }
 
