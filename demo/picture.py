@@ -47,7 +47,7 @@ PANELS = [
     ("cloud1_log10_column_K_I", "K I column", "log$_{10}$ (cm$^{-2}$)", "viridis"),
 ]
 # Shown in this order of precedence; the first two are for pixels where no column at all was found.
-NOTHING = ("no gas seen", "#c8ccd2")
+NOTHING = ("no line seen", "#c8ccd2")
 FLAGS = [
     ("no_contrast", "as hot as the stars", "#cc79a7"),
     ("at_bound", "at a bound", "#e69f00"),
@@ -172,7 +172,7 @@ def draw_spectra(slots, cube_path, pixels):
         axes.xaxis.set_major_locator(matplotlib.ticker.MaxNLocator(4))
         axes.spines[["top", "right"]].set_visible(False)
         axes.set_xlabel("vacuum wavelength, nm")
-    slots[0].set_ylabel("radiance / its median,\nshifted apart by 0.25")
+    slots[0].set_ylabel("radiance / its median,\napart by 0.25")
     for axes in slots[1:]:
         axes.sharey(slots[0])
         axes.tick_params(labelleft=False)
@@ -188,10 +188,14 @@ def main(cube_path, maps_path, picture_path):
     grid = figure.add_gridspec(3, 4, height_ratios=[1.28, 1.28, 0.78])
     pixels = choose_pixels(maps, bits)
     first = None
+    # Values that the flags call a guess are left out; saturated ones stay, with their large uncertainty.
+    guess = sum(bits[flag] for flag in ("not_converged", "at_bound", "no_contrast", "degenerate"))
+    doubtful = (maps["flags"] & guess) > 0
     for place, (name, title, label, colours) in enumerate(PANELS):
         axes = figure.add_subplot(grid[place // 4, place % 4])
         first = first or axes
-        draw_map(axes, figure, maps[name], title, label, colours, name.endswith("velocity"), name.endswith("sigma"))
+        values = np.where(doubtful & name.startswith("cloud"), np.nan, maps[name])
+        draw_map(axes, figure, values, title, label, colours, name.endswith("velocity"), name.endswith("sigma"))
     for pixel, colour in zip(pixels, SPECTRUM_COLOURS):
         if pixel is not None:
             first.plot(pixel[1], pixel[0], "o", ms=7, mfc="none", mec="white", mew=2.6)

@@ -34,16 +34,16 @@ def fields():
 
     # Cooler than the stars at the rim, hotter in the knot: in between lies a line where both are equal and the
     # gas cannot be seen.
-    gas = 3500 + 500 * turned_x + 3300 * knot
-    stars = 4900 + 450 * x - 250 * y
+    gas = 3900 + 500 * turned_x + 3000 * knot
+    stars = 5100 + 450 * x - 250 * y
     absent = density < 0.12
     column = np.log10(np.maximum(density, 1e-6))
     quantities = {
         "cloud1_temperature": gas,
         "cloud1_velocity": 110 * np.tanh(1.8 * turned_x) - 45 * turned_y,
-        "cloud1_log10_column_Ca_II": 14.8 + column,
-        "cloud1_log10_column_Na_I": 12.6 + 1.2 * column - 0.2 * knot,
-        "cloud1_log10_column_K_I": 11.9 + 1.2 * column - 0.3 * knot,
+        "cloud1_log10_column_Ca_II": 14.5 + column,
+        "cloud1_log10_column_Na_I": 12.8 + 1.1 * column - 0.2 * knot,
+        "cloud1_log10_column_K_I": 12.6 + 1.1 * column - 0.3 * knot,
         "background_temperature": stars,
     }
     for name, values in quantities.items():
