@@ -149,6 +149,7 @@ pub fn update(
         .fold(0.0_f64, |most, line| most.max(line.visibility));
     // Rounded, so that the reach of a line does not follow every small change of the strongest one.
     let floor = engine.sightline.tolerance * 0.2 * strongest.max(1e-300).log2().floor().exp2();
+    let span = engine.sightline.channels.span_vac_m().unwrap_or((0.0, 0.0));
     lines.retain_mut(|line| {
         let width_m = line.centre_m * line.relative_width;
         let reach = reach(
@@ -158,6 +159,12 @@ pub fn update(
             floor,
         );
         if let Some(reach) = reach {
+            // Light further away than the line-spread function reaches from the last channel is not seen.
+            let (first_m, last_m) = span;
+            let away_m = (line.centre_m - first_m).max(last_m - line.centre_m);
+            // A tenth more, because the width in which the reach is counted is rounded by up to that.
+            let seen = 1.1 * (away_m + 8.0 * line_spread.sigma_m(last_m)) / width_m;
+            let reach = reach.min(seen.max(1.5));
             line.shape = Shape::rounded(
                 line.relative_width,
                 line.depth,
