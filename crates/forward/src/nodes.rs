@@ -110,7 +110,7 @@ impl Shape {
             );
         }
         if wing_edge > 2.0 {
-            let softness = 0.5 * wing_edge;
+            let softness = 0.35 * wing_edge;
             bump(
                 wing_edge,
                 std::f64::consts::PI.powi(2) / digits * softness,

@@ -19,16 +19,10 @@ impl Kernel for Absorb<'_> {
     #[inline(always)]
     fn run<R: Arithmetic>(self) {
         let line = self.line;
-        let (wavelengths, cloud) = self.field.open(line.cloud, line.species);
+        let (wavelengths, inverses, cloud) = self.field.open(line.cloud, line.species);
         let reach = line.centre_m * line.shape.relative_reach() * 1.2;
-        let first = wavelengths.partition_point(|&w| w < line.centre_m - reach) / LANES * LANES;
-        let last = wavelengths
-            .partition_point(|&w| w <= line.centre_m + reach)
-            .next_multiple_of(LANES)
-            .min(wavelengths.len());
-        if first >= last {
-            return;
-        }
+        let first = wavelengths.partition_point(|block| block[LANES - 1] < line.centre_m - reach);
+        let last = wavelengths.partition_point(|block| block[0] <= line.centre_m + reach);
         let per_width = 1.0 / line.relative_width;
         let y = line.damping.y();
         let (own_temperature, kinetic_temperature) = if line.own_doppler_temperature {
@@ -37,21 +31,20 @@ impl Kernel for Absorb<'_> {
             (line.width_by_temperature, 0.0)
         };
         let depths = &mut cloud.by_column[line.species].depth;
-        for start in (first..last).step_by(LANES) {
-            let block = start..start + LANES;
+        for block in first..last {
             let mut x = [0.0; LANES];
-            for (x, &wavelength) in x.iter_mut().zip(&wavelengths[block.clone()]) {
-                *x = (line.centre_m - wavelength) / wavelength * per_width;
+            for lane in 0..LANES {
+                x[lane] = (line.centre_m - wavelengths[block][lane]) * (inverses[block][lane] * per_width);
             }
             let (mut k, mut l) = ([0.0; LANES], [0.0; LANES]);
             w_lanes::<_, R, LANES>(&x, &line.damping, &mut k, &mut l);
             let (mut slope_re, mut slope_im) = ([0.0; LANES], [0.0; LANES]);
             slope_lanes::<R, LANES>(&x, y, &k, &l, &mut slope_re, &mut slope_im);
-            let depth = &mut cloud.depth[block.clone()];
-            let by_temperature = &mut cloud.by_temperature[block.clone()];
-            let by_velocity = &mut cloud.by_velocity[block.clone()];
-            let by_turbulence = &mut cloud.by_turbulence[block.clone()];
-            let by_doppler = &mut cloud.by_doppler_temperature[block.clone()];
+            let depth = &mut cloud.depth[block];
+            let by_temperature = &mut cloud.by_temperature[block];
+            let by_velocity = &mut cloud.by_velocity[block];
+            let by_turbulence = &mut cloud.by_turbulence[block];
+            let by_doppler = &mut cloud.by_doppler_temperature[block];
             let by_column = &mut depths[block];
             for lane in 0..LANES {
                 let tau = line.depth * k[lane];

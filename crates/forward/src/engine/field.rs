@@ -3,16 +3,20 @@
 use super::groups::Placed;
 use super::lines::CloudState;
 use super::spread::RunOfChannels;
-use crate::lanes::{LANES, NormalIntegral};
+use crate::lanes::{Block, LANES, NormalIntegral};
 use crate::sightline::LineSpread;
 
 /// The nodes of one group within reach of one run of channels, in whole blocks of lanes: the last block is
 /// filled up with nodes of no weight.
 #[derive(Default)]
 pub struct Field {
-    pub wavelength_m: Vec<f64>,
+    pub wavelength_m: Vec<Block>,
+    /// 1/wavelength of each node.
+    pub per_wavelength: Vec<Block>,
     /// Weight of each node, in m.
-    pub weight_m: Vec<f64>,
+    pub weight_m: Vec<Block>,
+    /// Nodes before the filling.
+    pub nodes: usize,
     /// One entry a cloud.
     pub clouds: Vec<CloudField>,
     /// Excess radiance and its derivatives, times the weight: one row a node, laid out as those of the channels.
@@ -24,11 +28,11 @@ pub struct Field {
 pub struct CloudField {
     /// False while the cloud has no line in the group: then nothing below is meant.
     pub touched: bool,
-    pub depth: Vec<f64>,
-    pub by_temperature: Vec<f64>,
-    pub by_velocity: Vec<f64>,
-    pub by_turbulence: Vec<f64>,
-    pub by_doppler_temperature: Vec<f64>,
+    pub depth: Vec<Block>,
+    pub by_temperature: Vec<Block>,
+    pub by_velocity: Vec<Block>,
+    pub by_turbulence: Vec<Block>,
+    pub by_doppler_temperature: Vec<Block>,
     /// The part of each species: at the same time the derivative by the logarithm of its column.
     pub by_column: Vec<SpeciesField>,
 }
@@ -38,7 +42,7 @@ pub struct CloudField {
 pub struct SpeciesField {
     /// False while the species has no line in the group.
     pub touched: bool,
-    pub depth: Vec<f64>,
+    pub depth: Vec<Block>,
 }
 
 impl Field {
@@ -57,16 +61,20 @@ impl Field {
         if from >= to {
             return false;
         }
-        let count = (to - from).next_multiple_of(LANES);
+        self.nodes = to - from;
         self.wavelength_m.clear();
-        self.wavelength_m
-            .extend(plan.place[from..to].iter().map(|&z| zero + unit * z));
+        self.per_wavelength.clear();
         self.weight_m.clear();
-        self.weight_m
-            .extend(plan.weight[from..to].iter().map(|&w| unit * w));
-        let last = self.wavelength_m[to - from - 1];
-        self.wavelength_m.resize(count, last);
-        self.weight_m.resize(count, 0.0);
+        let place = &plan.place[from..to];
+        for (place, weight) in place.chunks(LANES).zip(plan.weight[from..to].chunks(LANES)) {
+            // The last block repeats its last node without weight.
+            let last = place[place.len() - 1];
+            let wavelength: Block =
+                std::array::from_fn(|lane| zero + unit * place.get(lane).unwrap_or(&last));
+            self.wavelength_m.push(wavelength);
+            self.per_wavelength.push(wavelength.map(f64::recip));
+            self.weight_m.push(std::array::from_fn(|lane| unit * weight.get(lane).unwrap_or(&0.0)));
+        }
         true
     }
 
@@ -84,13 +92,14 @@ impl Field {
         }
     }
 
-    /// The fields of a cloud and of one species of it, zeroed at the first touch.
-    pub fn open(&mut self, cloud: usize, species: usize) -> (&[f64], &mut CloudField) {
+    /// The wavelengths with their inverse, and the field of a cloud with that of one species of it opened:
+    /// zeroed at the first touch.
+    pub fn open(&mut self, cloud: usize, species: usize) -> (&[Block], &[Block], &mut CloudField) {
         let count = self.wavelength_m.len();
         let field = &mut self.clouds[cloud];
-        let zero = |values: &mut Vec<f64>| {
+        let zero = |values: &mut Vec<Block>| {
             values.clear();
-            values.resize(count, 0.0);
+            values.resize(count, [0.0; LANES]);
         };
         if !field.touched {
             field.touched = true;
@@ -104,6 +113,6 @@ impl Field {
             field.by_column[species].touched = true;
             zero(&mut field.by_column[species].depth);
         }
-        (&self.wavelength_m, field)
+        (&self.wavelength_m, &self.per_wavelength, field)
     }
 }

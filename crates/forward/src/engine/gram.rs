@@ -1,7 +1,7 @@
 //! Chi-square, gradient and normal matrix from the rows of an evaluation.
 
 use crate::lanes::{Kernel, LANES, dispatch};
-use crate::voigt::Arithmetic;
+use crate::voigt::{Arithmetic, Vector};
 
 /// `[r | J]ᵀ W [r | J]` of the residuals r = data - model and the derivatives J: chi-square in its corner,
 /// `Jᵀ W r` beside it, the normal matrix `Jᵀ W J` in the rest.
@@ -68,22 +68,17 @@ struct Accumulate<'a> {
 impl Kernel for Accumulate<'_> {
     #[inline(always)]
     fn run<R: Arithmetic>(self) {
+        let Some(vector) = R::vector() else { return };
         if self.stride == LANES {
             // All products fit in registers.
             let mut sums = [[0.0; LANES]; LANES];
-            for ((row, &data), &weight) in self
-                .rows
-                .chunks_exact(LANES)
-                .zip(self.data)
-                .zip(self.weight)
+            for ((row, &data), &weight) in
+                self.rows.as_chunks::<LANES>().0.iter().zip(self.data).zip(self.weight)
             {
-                let mut row: [f64; LANES] = std::array::from_fn(|lane| row[lane]);
+                let mut row = *row;
                 row[0] = data - row[0];
                 for (one, sums) in sums.iter_mut().enumerate() {
-                    let factor = weight * row[one];
-                    for lane in 0..LANES {
-                        sums[lane] = R::mul_add(factor, row[lane], sums[lane]);
-                    }
+                    add(vector, sums, weight * row[one], &row);
                 }
             }
             for (products, sums) in self.products.chunks_exact_mut(LANES).zip(sums) {
@@ -91,21 +86,25 @@ impl Kernel for Accumulate<'_> {
             }
             return;
         }
-        for ((row, &data), &weight) in self
-            .rows
-            .chunks_exact(self.stride)
-            .zip(self.data)
-            .zip(self.weight)
+        let mut row = vec![0.0; self.stride];
+        for ((stored, &data), &weight) in
+            self.rows.chunks_exact(self.stride).zip(self.data).zip(self.weight)
         {
-            let residual = data - row[0];
+            row.copy_from_slice(stored);
+            row[0] = data - row[0];
             for one in 0..self.size {
-                let factor = weight * if one == 0 { residual } else { row[one] };
                 let products = &mut self.products[one * self.stride..(one + 1) * self.stride];
-                products[0] = R::mul_add(factor, residual, products[0]);
-                for (product, value) in products[1..].iter_mut().zip(&row[1..]) {
-                    *product = R::mul_add(factor, *value, *product);
-                }
+                add(vector, products, weight * row[one], &row);
             }
         }
+    }
+}
+
+/// `sums += factor × row`, both of whole vectors.
+#[inline(always)]
+fn add<V: Vector>(vector: V, sums: &mut [f64], factor: f64, row: &[f64]) {
+    let factor = vector.splat(factor);
+    for (sum, value) in V::vectors_mut(sums).iter_mut().zip(V::vectors(row)) {
+        *sum = vector.mul_add(factor, *value, *sum);
     }
 }

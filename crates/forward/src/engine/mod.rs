@@ -13,6 +13,7 @@ mod field;
 mod gram;
 mod groups;
 mod lines;
+mod shares;
 mod spread;
 mod transfer;
 
@@ -57,6 +58,7 @@ pub struct Evaluation {
     groups: groups::Groups,
     key: Vec<Shape>,
     field: field::Field,
+    room: Vec<crate::lanes::Block>,
     states: Vec<lines::CloudState>,
 }
 
@@ -93,7 +95,7 @@ impl Engine {
             )),
             _ => None,
         };
-        let runs = spread::RunOfChannels::all(&sightline.channels);
+        let runs = spread::RunOfChannels::all(&sightline.channels, sightline.line_spread);
         let mean_channel_m = sightline.channels.mean_width_m();
         Engine {
             sightline,
@@ -146,6 +148,7 @@ impl Engine {
             groups: groups::Groups::default(),
             key: Vec::new(),
             field: field::Field::default(),
+            room: Vec::new(),
             states: Vec::new(),
         }
     }
@@ -176,6 +179,7 @@ impl Engine {
             key,
             field,
             states,
+            room,
             ..
         } = evaluation;
         let stride = *stride;
@@ -201,6 +205,7 @@ impl Engine {
                     normal: &self.normal,
                     line_spread: self.sightline.line_spread,
                     rows,
+                    room,
                 });
             }
         }

@@ -26,7 +26,8 @@ pub fn pass(
     stride: usize,
     field: &mut Field,
 ) {
-    let count = field.wavelength_m.len();
+    let count = field.wavelength_m.len() * LANES;
+    // A row holds what every call writes and zeros elsewhere: columns that this group does not touch.
     field.rows.clear();
     field.rows.resize(count * stride, 0.0);
     dispatch(Pass {
@@ -90,21 +91,21 @@ impl Kernel for Pass<'_> {
         let clouds = states.len().min(MOST_CLOUDS);
         let Field {
             wavelength_m,
+            per_wavelength,
             weight_m,
             clouds: depths,
             rows,
             ..
         } = field;
-        for start in (0..wavelength_m.len()).step_by(LANES) {
-            let block = start..start + LANES;
-            let wavelength = &wavelength_m[block.clone()];
-            let weight = &weight_m[block.clone()];
+        for block in 0..wavelength_m.len() {
+            let wavelength = wavelength_m[block];
+            let inverse = per_wavelength[block];
+            let weight = weight_m[block];
             let (mut first, mut second) = ([0.0; LANES], [0.0; LANES]);
             for lane in 0..LANES {
-                let inverse = 1.0 / wavelength[lane];
-                let square = inverse * inverse;
-                first[lane] = scale * FIRST_RADIATION_W_M2_PER_SR * square * square * inverse;
-                second[lane] = SECOND_RADIATION_M_K * inverse;
+                let square = inverse[lane] * inverse[lane];
+                first[lane] = scale * FIRST_RADIATION_W_M2_PER_SR * square * square * inverse[lane];
+                second[lane] = SECOND_RADIATION_M_K * inverse[lane];
             }
             let mut behind = [0.0; LANES];
             let mut behind_slope = [0.0; LANES];
@@ -143,12 +144,7 @@ impl Kernel for Pass<'_> {
                 }
                 let (source, source_slope) =
                     planck::<R>(&first, &second, states[cloud].temperature_k);
-                let mut negative = [0.0; LANES];
-                for (negative, depth) in
-                    negative.iter_mut().zip(&depths[cloud].depth[block.clone()])
-                {
-                    *negative = -depth;
-                }
+                let negative = depths[cloud].depth[block].map(|depth| -depth);
                 let change = expm1::<R>(&negative);
                 for lane in 0..LANES {
                     let contrast = source[lane] - behind[lane];
@@ -159,7 +155,7 @@ impl Kernel for Pass<'_> {
                     excess[lane] = R::mul_add(-change[lane], pull, excess[lane]);
                 }
             }
-            let rows = &mut rows[start * stride..(start + LANES) * stride];
+            let rows = &mut rows[block * LANES * stride..(block + 1) * LANES * stride];
             let mut write = |column: usize, values: &Block| {
                 for lane in 0..LANES {
                     rows[lane * stride + column] = values[lane] * weight[lane];
@@ -178,17 +174,15 @@ impl Kernel for Pass<'_> {
                     by_depth[cloud][lane] *= through[lane];
                     by_source[cloud][lane] *= through[lane];
                 }
-                let chain = |slopes: &[f64]| {
+                let chain = |slopes: &Block| {
                     let mut values = [0.0; LANES];
-                    for (value, (slope, pull)) in
-                        values.iter_mut().zip(slopes.iter().zip(&by_depth[cloud]))
-                    {
-                        *value = slope * pull;
+                    for lane in 0..LANES {
+                        values[lane] = slopes[lane] * by_depth[cloud][lane];
                     }
                     values
                 };
                 if column_of[place.temperature()] > 0 {
-                    let mut values = chain(&depth.by_temperature[block.clone()]);
+                    let mut values = chain(&depth.by_temperature[block]);
                     for lane in 0..LANES {
                         values[lane] += by_source[cloud][lane];
                     }
@@ -200,14 +194,14 @@ impl Kernel for Pass<'_> {
                     (place.doppler_temperature(), &depth.by_doppler_temperature),
                 ] {
                     if column_of[parameter] > 0 {
-                        write(column_of[parameter], &chain(&slopes[block.clone()]));
+                        write(column_of[parameter], &chain(&slopes[block]));
                     }
                 }
                 for (s, species) in depth.by_column.iter().enumerate() {
                     if species.touched && column_of[place.column(s)] > 0 {
                         write(
                             column_of[place.column(s)],
-                            &chain(&species.depth[block.clone()]),
+                            &chain(&species.depth[block]),
                         );
                     }
                 }
