@@ -19,8 +19,9 @@ use crate::output;
 
 /// Find temperatures, columns, velocity, background of a spectrum
 ///
-/// Every value that the setup leaves open ({ find = [low, high] }) is found, with its 1-sigma uncertainty
-/// and with flags that say in words where the answer cannot be trusted.
+/// Every value that the setup leaves open ({ find = [low, high] }) is found,
+/// with its 1-sigma uncertainty and with flags that say in words where the
+/// answer cannot be trusted.
 ///
 /// Example: backlit fit tube.csv --setup sodium.toml -o tube.json
 #[derive(Debug, Args)]

@@ -58,8 +58,17 @@ pub fn centres_m(
     };
     let step_nm = step_nm.unwrap_or(width_nm / (channels - 1.0));
     Ok((0..channels as usize)
-        .map(|i| (range.low_nm + i as f64 * step_nm) / 1e9)
+        .map(|i| metres(range.low_nm + i as f64 * step_nm))
         .collect())
+}
+
+/// A wavelength in metres, to 1e-9 nm, as a reader of the decimal number has it.
+///
+/// The way through text leaves no digits that only rounding made: a file shows 588.96 and not 588.9600000000002.
+fn metres(wavelength_nm: f64) -> f64 {
+    format!("{wavelength_nm:.9}e-9")
+        .parse()
+        .unwrap_or(wavelength_nm / 1e9)
 }
 
 fn hull_of_ranges(setup: &Setup) -> Option<RangeNm> {
@@ -121,5 +130,17 @@ fn around_lines(setup: &Setup, species: &[Arc<Species>], medium: Medium) -> Rang
     RangeNm {
         low_nm: 0.4 * peak_nm,
         high_nm: 3.0 * peak_nm,
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn wavelengths_show_no_digits_of_rounding() {
+        // 588 + 96 × 0.01 is 588.9600000000001 or so in binary numbers.
+        assert_eq!(metres(588.0 + 96.0 * 0.01), 588.96e-9);
+        assert_eq!(metres(700.0 + 0.2), 700.2e-9);
     }
 }

@@ -29,9 +29,10 @@ const SMALLEST_TILE_PIXELS: usize = 16;
 
 /// Fit every pixel of a cube, in parallel, resumable
 ///
-/// Finished tiles are kept in MAPS.h5.journal beside the output until all are done; only then MAPS.h5 appears.
-/// Ctrl-C finishes the tiles in work and ends with exit code 130; --resume continues from there, and the result
-/// is the same file. A second Ctrl-C ends at once; only the tiles in work are lost.
+/// Finished tiles are kept in MAPS.h5.journal beside the output until all are
+/// done; only then MAPS.h5 appears. Ctrl-C finishes the tiles in work and ends
+/// with exit code 130; --resume continues from there, and the result is the
+/// same file. A second Ctrl-C ends at once; only the tiles in work are lost.
 ///
 /// Example: backlit map nebula.h5 --setup sodium.toml -o maps.h5
 #[derive(Debug, Args)]
@@ -122,7 +123,9 @@ impl Map {
         let total = (ny * nx) as u64;
         let open = writer.open_tiles();
         let to_do: u64 = open.iter().map(|tile| tile.pixels() as u64).sum();
-        if self.resume && to_do < total {
+        if self.resume && to_do == 0 {
+            console.note(&format!("all {total} spectra were done before"));
+        } else if self.resume && to_do < total {
             console.note(&format!(
                 "{} of {total} spectra were done before",
                 total - to_do
@@ -222,6 +225,11 @@ impl Map {
         } else {
             format!(" ({})", raised.join(", "))
         };
+        if count.pixels == 0 {
+            // A run that was resumed with nothing left to do.
+            console.tell(&format!("{} is complete", self.output.display()));
+            return Ok(());
+        }
         console.tell(&format!(
             "wrote {}: {} spectra, {} fitted, {} flagged{raised}, {seconds:.2} s, {rate:.0} spectra/s",
             self.output.display(),
@@ -295,6 +303,10 @@ fn fit_tiles(
                 read_tiles.into_iter().par_bridge().for_each_init(
                     || (to_write.clone(), problem.workspace()),
                     |(to_write, workspace), read| {
+                        if interrupt::asked() {
+                            // Tiles that wait are left to the next run; those in work are finished.
+                            return;
+                        }
                         let fitted = read.map(|(tile, data)| {
                             let maps = tile_fit::fit(problem, workspace, reversed, &tile, data);
                             (tile, maps)

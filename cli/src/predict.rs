@@ -28,11 +28,13 @@ const DEFAULT_UNIT: &str = "W m-2 sr-1 nm-1";
 
 /// Compute the spectrum that a setup would show
 ///
-/// Values that the setup leaves open take their `start`. Without -o the spectrum goes to standard output
-/// as CSV; with -o the file's ending decides: .h5 or .hdf5 is HDF5, all else CSV.
+/// Values that the setup leaves open take their `start`. Without -o the spectrum
+/// goes to standard output as CSV; with -o the file's ending decides: .h5 or
+/// .hdf5 is HDF5, all else CSV.
 ///
-/// With --cube NY,NX and --vary VALUES.csv each pixel of a cube has its own values. VALUES.csv has the
-/// columns y, x (from 0) and any of the open quantities by their names in the maps, for example
+/// With --cube NY,NX and --vary VALUES.csv each pixel of a cube has its own
+/// values. VALUES.csv has the columns y, x (from 0) and any of the open
+/// quantities by their names in the maps, for example
 ///   y,x,cloud1_temperature,cloud1_log10_column_Na_I
 ///   0,0,1500,12.5
 ///

@@ -545,6 +545,9 @@ fn io_hint(action: Action, source: &io::Error, path: &Path) -> String {
             "make space on this disk, then run again (--resume keeps finished work)".into()
         }
         (Kind::IsADirectory, _) => "this is a folder; name a file".into(),
+        (Kind::WouldBlock, _) => {
+            "another program holds the file (HDF5 locks what it has open); close it there, then run again".into()
+        }
         _ => "check the disk and the path".into(),
     }
 }
