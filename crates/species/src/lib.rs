@@ -1,10 +1,11 @@
 //! Elements, levels, lines and partition functions: the built-in catalogue and readers of line lists.
 //!
-//! A [`Species`] is one atom or ion with its lines, its levels and its mass; [`Catalogue::builtin`] holds the ones
+//! A [`Species`] is one atom, ion or diatomic molecule with its lines, its levels and its mass; [`Catalogue::builtin`] holds the ones
 //! that the program knows, [`user::species`] reads one of the user's own. What light such a gas absorbs is not
 //! known here: see the crate above.
 
 pub mod catalogue;
+mod diatomic;
 mod error;
 pub mod hydrogenic;
 mod line;

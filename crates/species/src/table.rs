@@ -14,14 +14,28 @@ use crate::{Level, Line, Species, SpeciesError};
 /// Largest relative difference between a row's wavelength and its energies.
 const ENERGY_TOLERANCE: f64 = 1e-3;
 
-struct Row<'a> {
+/// One row that is being read, with its place for messages.
+pub(crate) struct Row<'a> {
     table: &'a str,
     number: usize,
     words: SplitWhitespace<'a>,
 }
 
-impl Row<'_> {
-    fn refuse(&self, column: &'static str, got: &str, expected: &'static str) -> SpeciesError {
+impl<'a> Row<'a> {
+    pub(crate) fn new(table: &'a str, number: usize, content: &'a str) -> Self {
+        Row {
+            table,
+            number,
+            words: content.split_whitespace(),
+        }
+    }
+
+    pub(crate) fn refuse(
+        &self,
+        column: &'static str,
+        got: &str,
+        expected: &'static str,
+    ) -> SpeciesError {
         SpeciesError::Table {
             table: self.table.to_owned(),
             line: self.number,
@@ -31,14 +45,14 @@ impl Row<'_> {
         }
     }
 
-    fn word(&mut self, column: &'static str) -> Result<&str, SpeciesError> {
+    pub(crate) fn word(&mut self, column: &'static str) -> Result<&str, SpeciesError> {
         match self.words.next() {
             Some(word) => Ok(word),
             None => Err(self.refuse(column, "", "there")),
         }
     }
 
-    fn number(
+    pub(crate) fn number(
         &mut self,
         column: &'static str,
         at_least: f64,
@@ -54,7 +68,7 @@ impl Row<'_> {
         }
     }
 
-    fn weight(&mut self, column: &'static str) -> Result<f64, SpeciesError> {
+    pub(crate) fn weight(&mut self, column: &'static str) -> Result<f64, SpeciesError> {
         let expected = "a whole number from 1";
         let value = self.number(column, 1.0, expected)?;
         if value.fract() == 0.0 {
@@ -65,7 +79,10 @@ impl Row<'_> {
     }
 
     /// The key of the row's source, which is shared between the rows, and nothing after it.
-    fn source(&mut self, known: &mut BTreeSet<Arc<str>>) -> Result<Arc<str>, SpeciesError> {
+    pub(crate) fn source(
+        &mut self,
+        known: &mut BTreeSet<Arc<str>>,
+    ) -> Result<Arc<str>, SpeciesError> {
         let key = match self.words.next() {
             Some(word) => word,
             None => return Err(self.refuse("source", "", "the key of a source")),
@@ -101,11 +118,7 @@ pub(crate) fn parse(table: &str, text: &str) -> Result<Species, SpeciesError> {
             section = content;
             continue;
         }
-        let mut row = Row {
-            table,
-            number: index + 1,
-            words: content.split_whitespace(),
-        };
+        let mut row = Row::new(table, index + 1, content);
         match section {
             "[levels]" => levels.push(level(&mut row, &mut sources)?),
             "[lines]" => lines.push(line(&mut row, &mut sources)?),

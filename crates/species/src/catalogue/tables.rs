@@ -105,3 +105,24 @@ pub(super) const TABLES: &[(&str, &str)] = tables! {
     "Tl I" "Tl_I"
     "Pb I" "Pb_I"
 };
+
+macro_rules! molecules {
+    ($($name:literal $file:literal)*) => {
+        &[$(($name, $file, include_str!(concat!("../../data/molecules/", $file, ".txt")))),*]
+    };
+}
+
+/// Name of each isotopologue, name and text of its molecule's table.
+#[rustfmt::skip]
+pub(super) const MOLECULES: &[(&str, &str, &str)] = molecules! {
+    "CO" "CO"
+    "13CO" "CO"
+    "C18O" "CO"
+    "H35Cl" "HCl"
+    "H37Cl" "HCl"
+    "HF" "HF"
+    "OH" "OH"
+    "CH" "CH"
+    "NO" "NO"
+    "CN" "CN"
+};
