@@ -4,9 +4,11 @@
 //! case (a) to case (b), and Lambda doubling. Not covered: hyperfine structure (its components are one line here, with the
 //! weights 2J + 1 of a molecule without nuclear spins), electronic transitions, the decay of levels by collisions.
 //!
-//! Isotopologues share the constants of the first one in their table, scaled by the reduced mass. That leaves out the
-//! breakdown of the Born-Oppenheimer approximation, at most 1e-5 of a line's wavenumber for the pairs that the catalogue
-//! holds (`heavier_isotopologues_are_where_they_were_measured` in the reference checks).
+//! Isotopologues share the constants of the first one in their table, scaled by the reduced mass; a relative correction of
+//! B stands in the table where Born-Oppenheimer breakdown shows. Accuracy against measured lines, rotation: 1e-7 (CO),
+//! 1e-6 (13CO, C18O, HF), 1e-5 (HCl), 1e-4 (OH, NO, CN), 1e-3 (CH); fundamentals 0.001 cm^-1 (CO), 0.005 to 0.02 cm^-1
+//! (HCl, HF, 13CO), 0.1 cm^-1 (OH): `reference-checks`, `rotation_lines_are_where_they_were_measured_and_as_strong` and
+//! `vibration_lines_are_where_they_were_measured`.
 
 mod lines;
 mod molecule;

@@ -29,6 +29,8 @@ impl State {
 pub(super) struct Isotopologue {
     pub(super) name: String,
     masses_u: [f64; 2],
+    /// Relative correction of B beyond the reduced mass.
+    correction_of_b: f64,
 }
 
 impl Isotopologue {
@@ -191,6 +193,7 @@ impl Molecule {
             });
         };
         let root = (self.isotopologues[0].reduced_mass_u() / wanted.reduced_mass_u()).sqrt();
+        let correction_of_b = wanted.correction_of_b;
         self.isotopologues = vec![wanted.clone()];
         for coefficient in &mut self.coefficients {
             let rotation = SYMBOLS
@@ -198,6 +201,9 @@ impl Molecule {
                 .find(|known| known.1 == coefficient.symbol)
                 .map_or(0, |known| known.2);
             coefficient.value_per_cm *= root.powi(coefficient.power + rotation);
+            if coefficient.symbol == Symbol::B {
+                coefficient.value_per_cm *= 1.0 + correction_of_b;
+            }
         }
         for band in &mut self.bands {
             let quanta = f64::from(band.v_upper - band.v_lower);
@@ -266,8 +272,13 @@ fn isotopologue(
     let name = row.word("name")?.to_owned();
     let mut mass = || row.number("mass_u", 1.0, "a mass from 1 u");
     let masses_u = [mass()?, mass()?];
+    let correction_of_b = row.number("correction_of_b", -0.01, "a correction of less than 1 %")?;
     row.source(sources)?;
-    Ok(Isotopologue { name, masses_u })
+    Ok(Isotopologue {
+        name,
+        masses_u,
+        correction_of_b,
+    })
 }
 
 fn coefficient(
