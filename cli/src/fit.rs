@@ -4,13 +4,15 @@ use std::fmt::Write as _;
 use std::path::PathBuf;
 
 use backlit_cubes::Spectrum;
+use backlit_inverse::clouds::{Choice, Ladder};
 use backlit_inverse::setup::Setup;
-use backlit_inverse::{Fit as Answer, Observation, Problem, Quantity};
+use backlit_inverse::{Ask, Fit as Answer, Intervals, LEVEL, Observation, Problem, Quantity};
 use backlit_species::Catalogue;
 use clap::Args;
 use serde::Serialize;
 use serde_json::{Map, Value, json};
 
+use crate::clouds::{self, Evidence};
 use crate::console::{Console, json_text};
 use crate::failure::Failure;
 use crate::flags;
@@ -21,7 +23,8 @@ use crate::output;
 ///
 /// Every value that the setup leaves open ({ find = [low, high] }) is found,
 /// with its 1-sigma uncertainty and with flags that say in words where the
-/// answer cannot be trusted.
+/// answer cannot be trusted. Where a flag says that the uncertainty is not
+/// valid, an interval of 68.3 % is walked out instead.
 ///
 /// Example: backlit fit tube.csv --setup sodium.toml -o tube.json
 #[derive(Debug, Args)]
@@ -42,6 +45,23 @@ pub struct Fit {
     /// Replace the output file if it exists
     #[arg(long)]
     overwrite: bool,
+
+    /// Walk out the 68.3 % interval of every value
+    ///
+    /// The ends are where chi-square, with all other values refitted, is 1 above
+    /// its least. Without this option only values whose uncertainty a flag calls
+    /// invalid get an interval. An end that is open is `-`, null in JSON.
+    #[arg(long, verbatim_doc_comment)]
+    intervals: bool,
+
+    /// Find how many clouds there are, such as up-to-3
+    ///
+    /// Fits with 1 to N copies of the setup's one [[cloud]] are compared by the
+    /// Bayesian information criterion; a further cloud must also be worth the
+    /// search for it. The clouds are numbered by rising velocity where their
+    /// order makes no difference.
+    #[arg(long, value_name = "up-to-N", value_parser = clouds::most, verbatim_doc_comment)]
+    clouds: Option<usize>,
 }
 
 #[derive(Serialize)]
@@ -58,6 +78,9 @@ struct Document<'a> {
     iterations: u32,
     stop: String,
     messages: &'a [String],
+    intervals: Map<String, Value>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    clouds: Option<Value>,
 }
 
 impl Fit {
@@ -82,13 +105,6 @@ impl Fit {
             },
         )?;
         let measured = frame.measured_background(console, &setup)?;
-        let problem = Problem::new(
-            &setup,
-            &frame.axis,
-            &frame.unit,
-            Catalogue::builtin(),
-            measured.as_deref(),
-        )?;
         let intensity = frame.rising(&spectrum.intensity);
         let uncertainty = spectrum.uncertainty.as_deref().map(|u| frame.rising(u));
         let mask = frame.rising(&spectrum.mask);
@@ -97,9 +113,38 @@ impl Fit {
             uncertainty: uncertainty.as_deref(),
             mask: &mask,
         };
-        let answer = problem.fit(&mut problem.workspace(), &observation, None);
+        let intervals = if self.intervals {
+            Intervals::All
+        } else {
+            Intervals::Doubtful
+        };
+        let catalogue = Catalogue::builtin();
+        let measured = measured.as_deref();
+        let (quantities, answer, evidence) = match self.clouds {
+            None => {
+                let problem = Problem::new(&setup, &frame.axis, &frame.unit, catalogue, measured)?;
+                let ask = Ask {
+                    intervals,
+                    ..Ask::default()
+                };
+                let answer = problem.fit_with(&mut problem.workspace(), &observation, &ask);
+                (problem.quantities().to_vec(), answer, None)
+            }
+            Some(most) => {
+                let ladder =
+                    Ladder::new(&setup, most, &frame.axis, &frame.unit, catalogue, measured)?;
+                let Choice { clouds, fit, tried } =
+                    ladder.fit(&mut ladder.workspaces(), &observation, intervals);
+                let evidence = Evidence {
+                    chosen: clouds,
+                    tried,
+                };
+                let quantities = ladder.problem(clouds).quantities().to_vec();
+                (quantities, fit, Some(evidence))
+            }
+        };
 
-        let document = self.document(problem.quantities(), &answer);
+        let document = self.document(&quantities, &answer, evidence.as_ref());
         if let Some(path) = &self.output {
             output::write_text(path, &json_text(&document)?, self.overwrite)?;
         }
@@ -109,11 +154,17 @@ impl Fit {
         if console.json() {
             console.print_json(&document)
         } else {
-            console.print(&table(problem.quantities(), &answer))
+            let evidence = evidence.map_or(String::new(), |evidence| evidence.table());
+            console.print(&(table(&quantities, &answer) + &evidence))
         }
     }
 
-    fn document<'a>(&self, quantities: &[Quantity], answer: &'a Answer) -> Document<'a> {
+    fn document<'a>(
+        &self,
+        quantities: &[Quantity],
+        answer: &'a Answer,
+        evidence: Option<&Evidence>,
+    ) -> Document<'a> {
         // A number that is not finite has no form in JSON: `json!` writes null, which is "no answer".
         let by_name = |values: &[f64]| -> Map<String, Value> {
             quantities
@@ -143,6 +194,17 @@ impl Fit {
             iterations: answer.iterations,
             stop: answer.stop.name().to_owned(),
             messages: &answer.messages,
+            intervals: quantities
+                .iter()
+                .zip(&answer.intervals)
+                .filter_map(|(quantity, interval)| {
+                    let interval = (*interval)?;
+                    let ends =
+                        json!({ "low": interval.low, "high": interval.high, "level": LEVEL });
+                    Some((quantity.name.clone(), ends))
+                })
+                .collect(),
+            clouds: evidence.map(Evidence::json),
         }
     }
 }
@@ -174,6 +236,28 @@ fn table(quantities: &[Quantity], answer: &Answer) -> String {
             let _ = write!(text, "   (below {upper:.3} at 3 sigma)");
         }
         text.push('\n');
+    }
+    if answer.intervals.iter().any(Option::is_some) {
+        let _ = writeln!(
+            text,
+            "\n{:<width$}  {:>14}  {:>12}",
+            format!("interval of {:.1} %", 100.0 * LEVEL),
+            "from",
+            "to"
+        );
+    }
+    for (i, (quantity, interval)) in quantities.iter().zip(&answer.intervals).enumerate() {
+        let Some(interval) = interval else { continue };
+        // Two digits of the nearer end's distance, as with a standard deviation.
+        let value = answer.values.get(i).copied().unwrap_or(f64::NAN);
+        let reach = [interval.low, interval.high]
+            .iter()
+            .flatten()
+            .map(|end| (end - value).abs())
+            .fold(f64::INFINITY, f64::min);
+        let [low, high] =
+            [interval.low, interval.high].map(|end| rounded(end.unwrap_or(f64::NAN), reach).0);
+        let _ = writeln!(text, "{:<width$}  {low:>14}  {high:>12}", quantity.name);
     }
     let _ = writeln!(
         text,

@@ -4,6 +4,7 @@
 //! the command line is wrong, 130 interrupted. Nothing here computes physics.
 
 mod arguments;
+mod clouds;
 mod console;
 mod failure;
 mod fit;

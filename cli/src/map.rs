@@ -6,8 +6,8 @@ use std::sync::mpsc::{self, Receiver, SyncSender};
 use std::time::{Instant, SystemTime};
 
 use backlit_cubes::{Cube, FlagName, MapsSpec, MapsWriter, Tile, TileData};
-use backlit_inverse::Problem;
 use backlit_inverse::setup::Setup;
+use backlit_inverse::{Intervals, Problem};
 use backlit_species::Catalogue;
 use clap::Args;
 use rayon::ThreadPool;
@@ -61,6 +61,13 @@ pub struct Map {
     /// Pixels read and fitted together [default: about 3 MiB]
     #[arg(long, value_name = "N", value_parser = clap::value_parser!(u32).range(1..))]
     tile_pixels: Option<u32>,
+
+    /// Add maps with the ends of 68.3 % intervals
+    ///
+    /// <name>_low and <name>_high: where chi-square, with all other values
+    /// refitted, is 1 above its least. Takes several times as long.
+    #[arg(long, verbatim_doc_comment)]
+    intervals: bool,
 }
 
 #[derive(Serialize)]
@@ -136,11 +143,20 @@ impl Map {
         let reversed = frame.axis.is_reversed();
         let progress = Progress::new(console, total, total - to_do);
         let began = Instant::now();
-        let count = fit_tiles(&cube, reversed, &problem, open, pool, |tile, maps| {
-            writer.put(tile.index, &maps.values, &maps.flags)?;
-            progress.advance(tile.pixels() as u64);
-            Ok(())
-        });
+        let wanted = self.wanted_intervals();
+        let count = fit_tiles(
+            &cube,
+            reversed,
+            &problem,
+            wanted,
+            open,
+            pool,
+            |tile, maps| {
+                writer.put(tile.index, &maps.values, &maps.flags)?;
+                progress.advance(tile.pixels() as u64);
+                Ok(())
+            },
+        );
         progress.finish();
         let count = count?;
         if count.pixels < to_do {
@@ -179,18 +195,31 @@ impl Map {
         Ok(MapsSpec {
             ny,
             nx,
-            quantities: tile_fit::map_quantities(problem.quantities()),
+            quantities: tile_fit::map_quantities(problem.quantities(), self.wanted_intervals()),
             flag_names: FlagName::standard(),
             attributes: attributes
                 .map(|(key, value)| (key.to_owned(), value))
                 .into(),
             // The setup's text in one line: any change of it is another run.
             identity: format!(
-                "program: backlit {version}\ninput sha256: {checksum}\nsetup: {:?}\n",
-                setup.text
+                "program: backlit {version}\ninput sha256: {checksum}\nsetup: {:?}\n{}",
+                setup.text,
+                if self.intervals {
+                    "intervals: all\n"
+                } else {
+                    ""
+                }
             ),
             tiles: cube.tiles(wanted),
         })
+    }
+
+    fn wanted_intervals(&self) -> Intervals {
+        if self.intervals {
+            Intervals::All
+        } else {
+            Intervals::None
+        }
     }
 
     fn tell(&self, console: &Console, count: &Count, seconds: f64) -> Result<(), Failure> {
@@ -272,6 +301,7 @@ fn fit_tiles(
     cube: &Cube,
     reversed: bool,
     problem: &Problem,
+    intervals: Intervals,
     tiles: Vec<Tile>,
     pool: &ThreadPool,
     mut write: impl FnMut(Tile, &TileMaps) -> Result<(), Failure>,
@@ -308,7 +338,8 @@ fn fit_tiles(
                             return;
                         }
                         let fitted = read.map(|(tile, data)| {
-                            let maps = tile_fit::fit(problem, workspace, reversed, &tile, data);
+                            let maps =
+                                tile_fit::fit(problem, workspace, reversed, &tile, data, intervals);
                             (tile, maps)
                         });
                         // As above: nobody listens only after a failure that is already reported.

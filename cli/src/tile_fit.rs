@@ -1,7 +1,7 @@
 //! The pixels of one tile, one after the other.
 
 use backlit_cubes::{Quantity as MapQuantity, Tile, TileData, TileUncertainty};
-use backlit_inverse::{Fit, Observation, Problem, Quantity, Workspace};
+use backlit_inverse::{Ask, Fit, Intervals, Observation, Problem, Quantity, Workspace};
 use ndarray::{Array2, s};
 
 use crate::fit::is_column;
@@ -16,8 +16,9 @@ pub struct TileMaps {
     pub fitted: u64,
 }
 
-/// The maps that belong to the free quantities: each with its sigma, columns with an upper limit, then the quality.
-pub fn map_quantities(quantities: &[Quantity]) -> Vec<MapQuantity> {
+/// The maps that belong to the free quantities: each with its sigma, columns with an upper limit, the ends of the
+/// intervals if they are asked for, then the quality.
+pub fn map_quantities(quantities: &[Quantity], intervals: Intervals) -> Vec<MapQuantity> {
     let mut maps = Vec::new();
     for quantity in quantities {
         let (name, units, words) = (&quantity.name, &quantity.units, &quantity.long_name);
@@ -44,6 +45,15 @@ pub fn map_quantities(quantities: &[Quantity]) -> Vec<MapQuantity> {
                 format!("{words}, 3-sigma upper limit"),
             ));
         }
+        if intervals == Intervals::All {
+            for (end, word) in [("low", "lower"), ("high", "upper")] {
+                maps.push(MapQuantity::new(
+                    format!("{name}_{end}"),
+                    units.as_str(),
+                    format!("{words}, {word} end of the 68.3 % interval"),
+                ));
+            }
+        }
     }
     maps.push(MapQuantity::new("chi2_reduced", "1", "reduced chi-square"));
     maps.push(MapQuantity::new("iterations", "1", "iterations of the fit"));
@@ -59,9 +69,10 @@ pub fn fit(
     reversed: bool,
     tile: &Tile,
     data: TileData,
+    intervals: Intervals,
 ) -> TileMaps {
     let quantities = problem.quantities();
-    let maps = map_quantities(quantities);
+    let maps = map_quantities(quantities, intervals);
     let mut values = Array2::from_elem((maps.len(), tile.pixels()), f64::NAN);
     let mut flags = vec![0; tile.pixels()];
     let mut fitted = 0;
@@ -76,8 +87,13 @@ pub fn fit(
             uncertainty: uncertainty.map(|row| row.to_slice().unwrap_or_default()),
             mask: mask.to_slice().unwrap_or_default(),
         };
-        let answer = problem.fit(workspace, &observation, near.as_ref());
-        record(quantities, &answer, &mut values, pixel);
+        let ask = Ask {
+            near: near.as_ref(),
+            intervals,
+            ..Ask::default()
+        };
+        let answer = problem.fit_with(workspace, &observation, &ask);
+        record(quantities, &answer, intervals, &mut values, pixel);
         flags[pixel] = answer.flags.0;
         fitted += u64::from(answer.values.iter().any(|value| value.is_finite()));
         if answer.flags.0 == 0 {
@@ -112,7 +128,13 @@ fn reverse(data: TileData) -> TileData {
     }
 }
 
-fn record(quantities: &[Quantity], answer: &Fit, values: &mut Array2<f64>, pixel: usize) {
+fn record(
+    quantities: &[Quantity],
+    answer: &Fit,
+    intervals: Intervals,
+    values: &mut Array2<f64>,
+    pixel: usize,
+) {
     let mut map = 0;
     let mut put = |value: f64| {
         values[(map, pixel)] = value;
@@ -123,6 +145,11 @@ fn record(quantities: &[Quantity], answer: &Fit, values: &mut Array2<f64>, pixel
         put(answer.sigma[i]);
         if is_column(quantity) {
             put(answer.upper[i]);
+        }
+        if intervals == Intervals::All {
+            let (low, high) = answer.intervals[i].map_or((None, None), |i| (i.low, i.high));
+            put(low.unwrap_or(f64::NAN));
+            put(high.unwrap_or(f64::NAN));
         }
     }
     put(answer.chi2_reduced);

@@ -50,4 +50,12 @@ pub enum InverseError {
         /// The setup file.
         path: PathBuf,
     },
+    /// The number of clouds is to be found, but the setup does not have one cloud to copy.
+    #[error("{got} clouds where the number of clouds is to be found, exactly 1 is needed ({})\n  hint: describe one [[cloud]]; the others get the same bounds", path.display())]
+    CloudToCopy {
+        /// Clouds of the setup.
+        got: usize,
+        /// The setup file.
+        path: PathBuf,
+    },
 }

@@ -1,6 +1,7 @@
 //! The fit of one spectrum, from data to answer.
 
 use crate::coordinate::Kind;
+use crate::intervals::{self, Interval, Intervals};
 use crate::problem::{Observation, Problem, Workspace};
 use crate::solver::{Descent, Limits, StopReason, descend};
 use crate::start;
@@ -30,6 +31,27 @@ pub struct Fit {
     pub messages: Vec<String>,
     /// Parameters of the forward model at the answer.
     pub parameters: Vec<f64>,
+    /// Profile-likelihood intervals of 68.3 %, where they were asked for.
+    pub intervals: Vec<Option<Interval>>,
+    /// Chi-square with the noise as given, over the channels that count.
+    pub chi_square: f64,
+    /// Usable channels, outliers included.
+    pub channels: usize,
+    /// Channels that a robust fit left out.
+    pub outliers: usize,
+    /// Clouds of which nothing is detected.
+    pub absent: Vec<usize>,
+}
+
+/// What a fit may start from, and what it should give beyond values and covariance.
+#[derive(Debug, Clone, Copy, Default)]
+pub struct Ask<'a> {
+    /// The answer of a neighbouring pixel, tried first.
+    pub near: Option<&'a Fit>,
+    /// Further starts: full sets of parameters of the forward model.
+    pub starts: &'a [Vec<f64>],
+    /// Which values get a profile-likelihood interval.
+    pub intervals: Intervals,
 }
 
 /// What the verdict looks at.
@@ -50,7 +72,7 @@ pub(crate) struct Found {
 
 /// Evaluations that each start gets before the field is narrowed, and the best few after it.
 const FIRST_ROUND: u32 = 9;
-const LAST_ROUND: u32 = 120;
+pub(crate) const LAST_ROUND: u32 = 120;
 /// Starts that go on to the last round.
 const FINALISTS: usize = 3;
 /// Chi-square within this many of its standard deviations says that a neighbour's answer fits here too.
@@ -73,6 +95,20 @@ impl Problem {
         data: &Observation<'_>,
         near: Option<&Fit>,
     ) -> Fit {
+        let ask = Ask {
+            near,
+            ..Ask::default()
+        };
+        self.fit_with(workspace, data, &ask)
+    }
+
+    /// Fits one spectrum as [`Problem::fit`], with more to start from and more to answer.
+    pub fn fit_with(
+        &self,
+        workspace: &mut Workspace,
+        data: &Observation<'_>,
+        ask: &Ask<'_>,
+    ) -> Fit {
         let mut messages = Vec::new();
         let usable = self.load(workspace, data, &mut messages);
         let mut flags = Flags::default();
@@ -84,12 +120,26 @@ impl Problem {
             ));
             return self.nothing(flags, messages);
         }
-        let degrees = (usable - self.free.len()) as f64;
+        let channels = usable;
+        let (best, outliers) = if self.choices.robust {
+            self.best_despite_outliers(workspace, ask, usable, &mut messages)
+        } else {
+            let degrees = (usable - self.free.len()) as f64;
+            (self.best(workspace, ask, degrees), 0)
+        };
+        let usable = usable - outliers;
         let Best {
             mut parameters,
             mut descent,
             rivals,
-        } = self.best(workspace, near, degrees);
+        } = best;
+        let noise_squared =
+            self.scale_noise(workspace, usable, &mut descent.chi_square, &mut messages);
+        let rivals = rivals
+            .into_iter()
+            .filter(|(_, other)| other / noise_squared - descent.chi_square < AS_GOOD)
+            .map(|(parameters, _)| parameters)
+            .collect();
         let absent = self.detections(workspace, &parameters, descent.chi_square, &mut messages);
         let mut upper = vec![f64::NAN; self.free.len()];
         let clouds = self.engine.sightline().clouds.len();
@@ -127,7 +177,7 @@ impl Problem {
             flags.raise(Flags::NOT_CONVERGED);
             messages.push(format!("stopped after {} evaluations", descent.evaluations));
         }
-        let degrees = (usable - free.len()) as f64;
+        let degrees = (usable - free.len()).max(1) as f64;
         let near_lines = self.misfit_near_lines(workspace, &parameters, free.len());
         verdict::misfit(
             descent.chi_square,
@@ -138,7 +188,11 @@ impl Problem {
         );
         let mut answer = self.nothing(flags, messages);
         answer.upper = upper;
-        answer.chi2_reduced = descent.chi_square / degrees;
+        answer.chi_square = descent.chi_square * noise_squared;
+        answer.chi2_reduced = answer.chi_square / degrees;
+        answer.channels = channels;
+        answer.outliers = outliers;
+        answer.absent.clone_from(&absent.clouds);
         answer.iterations = descent.evaluations;
         answer.stop = descent.stop;
         let Some(covariance) = self.covariance(workspace, &free, &parameters) else {
@@ -167,13 +221,36 @@ impl Problem {
             absent_columns: absent.columns,
             rivals,
         };
-        verdict::judge(self, &found, &mut answer.flags, &mut answer.messages);
+        let doubtful = verdict::judge(self, &found, &mut answer.flags, &mut answer.messages);
+        let wanted: Vec<usize> = match ask.intervals {
+            Intervals::None => Vec::new(),
+            Intervals::Doubtful => doubtful,
+            Intervals::All => found.free.clone(),
+        };
+        if let Some(better) = intervals::fill(
+            self,
+            workspace,
+            &found,
+            descent.chi_square,
+            &wanted,
+            &mut answer,
+        ) && ask.starts.last() != Some(&better)
+        {
+            // A walk along the profile came into a deeper valley than all starts did.
+            let starts = [ask.starts, std::slice::from_ref(&better)].concat();
+            let ask = Ask {
+                starts: &starts,
+                near: None,
+                ..*ask
+            };
+            return self.fit_with(workspace, data, &ask);
+        }
         answer.parameters = found.parameters;
         answer
     }
 
     /// Brings the data into the workspace; returns the number of usable channels.
-    fn load(
+    pub(crate) fn load(
         &self,
         workspace: &mut Workspace,
         data: &Observation<'_>,
@@ -232,9 +309,9 @@ impl Problem {
     }
 
     /// The best minimum that any start leads to, and the others that fit as well.
-    fn best(&self, workspace: &mut Workspace, near: Option<&Fit>, degrees: f64) -> Best {
+    pub(crate) fn best(&self, workspace: &mut Workspace, ask: &Ask<'_>, degrees: f64) -> Best {
         let mut field: Vec<(Vec<f64>, Descent)> = Vec::new();
-        if let Some(near) = near {
+        if let Some(near) = ask.near {
             let mut parameters = near.parameters.clone();
             self.clamp(&mut parameters);
             let descent = self.descend_with(workspace, &mut parameters, LAST_ROUND);
@@ -248,7 +325,12 @@ impl Problem {
             }
             field.push((parameters, descent));
         }
-        for mut start in start::starts(self, workspace) {
+        for mut start in ask
+            .starts
+            .iter()
+            .cloned()
+            .chain(start::starts(self, workspace))
+        {
             let descent = self.descend_with(workspace, &mut start, FIRST_ROUND);
             field.push((start, descent));
         }
@@ -276,17 +358,18 @@ impl Problem {
             };
         };
         let rivals = ranked
-            .filter(|(_, other)| other.chi_square - descent.chi_square < AS_GOOD)
-            .map(|(parameters, _)| parameters)
+            .map(|(parameters, other)| (parameters, other.chi_square))
             .collect();
-        Best {
+        let mut best = Best {
             parameters,
             descent,
             rivals,
-        }
+        };
+        self.number_twins_by_velocity(workspace, &mut best);
+        best
     }
 
-    fn descend_with(
+    pub(crate) fn descend_with(
         &self,
         workspace: &mut Workspace,
         parameters: &mut [f64],
@@ -329,7 +412,7 @@ impl Problem {
         )
     }
 
-    fn limits_of(&self, free: &[usize]) -> Limits {
+    pub(crate) fn limits_of(&self, free: &[usize]) -> Limits {
         let pick = |values: &[f64]| free.iter().map(|&i| values[i]).collect::<Vec<f64>>();
         Limits {
             parameter: free.iter().map(|&i| self.limits.parameter[i]).collect(),
@@ -408,7 +491,7 @@ impl Problem {
 
     /// Improvement of chi-square below which noise alone could have made it: three standard deviations, and
     /// more where the velocity was searched for, by the number of places looked at.
-    fn needed(&self, velocity: usize, cloud: usize) -> f64 {
+    pub(crate) fn needed(&self, velocity: usize, cloud: usize) -> f64 {
         let Some(value) = self.free.iter().find(|value| value.parameter == velocity) else {
             return SEEN * SEEN;
         };
@@ -533,16 +616,21 @@ impl Problem {
             stop: StopReason::NoData,
             messages,
             parameters: self.middle.clone(),
+            intervals: vec![None; self.free.len()],
+            chi_square: f64::NAN,
+            channels: 0,
+            outliers: 0,
+            absent: Vec::new(),
         }
     }
 }
 
 /// Where the starts have led.
-struct Best {
-    parameters: Vec<f64>,
-    descent: Descent,
-    /// Other minima that describe the data as well.
-    rivals: Vec<Vec<f64>>,
+pub(crate) struct Best {
+    pub parameters: Vec<f64>,
+    pub descent: Descent,
+    /// Other minima, each with its chi-square.
+    pub rivals: Vec<(Vec<f64>, f64)>,
 }
 
 /// What could be left out.

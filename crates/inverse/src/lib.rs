@@ -5,11 +5,14 @@
 //! ([`start`]), the descent ([`solver`]), the covariance ([`uncertainty`]) and what the numbers are worth
 //! ([`verdict`]). This crate reads no data files, prints nothing and never panics on data.
 
+pub mod clouds;
 pub mod coordinate;
 mod error;
 mod fit;
+mod intervals;
 pub mod noise;
 mod problem;
+mod robust;
 pub mod setup;
 pub mod solver;
 mod start;
@@ -18,7 +21,8 @@ mod upper_limit;
 mod verdict;
 
 pub use error::InverseError;
-pub use fit::Fit;
+pub use fit::{Ask, Fit};
+pub use intervals::{Interval, Intervals, LEVEL};
 pub use problem::{Observation, Problem, Quantity, Workspace};
 pub use solver::StopReason;
 pub use verdict::Flags;

@@ -2,7 +2,7 @@
 
 use crate::coordinate::{FreeValue, Kind};
 use crate::error::InverseError;
-use crate::setup::{Excitation, Instrument, Light, Setup, Value};
+use crate::setup::{Excitation, FitChoices, Instrument, Light, Setup, Value};
 use crate::solver::{Limits, Room, Target};
 use backlit_forward::engine::{Gram, MOST_CLOUDS};
 use backlit_forward::sightline::FWHM_PER_SIGMA;
@@ -40,6 +40,9 @@ pub struct Problem {
     /// Name of each cloud's species.
     pub(crate) species: Vec<Vec<String>>,
     path: std::path::PathBuf,
+    pub(crate) choices: FitChoices,
+    /// All clouds are described alike: any order of them is the same question.
+    pub(crate) twins: bool,
 }
 
 /// Room for the fits of one thread.
@@ -260,6 +263,12 @@ impl Problem {
                 .map(|cloud| cloud.iter().map(|s| s.name.clone()).collect())
                 .collect(),
             path: setup.path.clone(),
+            choices: setup.fit,
+            twins: setup.clouds.len() > 1
+                && setup
+                    .clouds
+                    .windows(2)
+                    .all(|pair| pair[0].describes_the_same_as(&pair[1])),
         })
     }
 

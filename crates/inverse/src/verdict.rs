@@ -82,21 +82,47 @@ const OPEN: f64 = 0.25;
 const MISFIT: f64 = 5.0;
 const MISFIT_FACTOR: f64 = 1.15;
 
-/// Raises the flags that concern values which were found, and says why.
+/// Raises the flags that concern values which were found, and says why; returns the free values whose covariance
+/// is not to be believed.
 pub(crate) fn judge(
     problem: &Problem,
     found: &Found,
     flags: &mut Flags,
     messages: &mut Vec<String>,
-) {
-    bounds(problem, found, flags, messages);
-    contrast(problem, found, flags, messages);
-    saturation(problem, found, flags, messages);
-    ties(problem, found, flags, messages);
-    open_values(problem, found, flags, messages);
+) -> Vec<usize> {
+    let mut raised = Raised {
+        flags,
+        messages,
+        doubtful: Vec::new(),
+    };
+    bounds(problem, found, &mut raised);
+    contrast(problem, found, &mut raised);
+    saturation(problem, found, &mut raised);
+    ties(problem, found, &mut raised);
+    open_values(problem, found, &mut raised);
+    let mut doubtful = raised.doubtful;
+    doubtful.sort_unstable();
+    doubtful.dedup();
+    doubtful
 }
 
-fn bounds(problem: &Problem, found: &Found, flags: &mut Flags, messages: &mut Vec<String>) {
+/// What the verdict has against the answer so far.
+struct Raised<'a> {
+    flags: &'a mut Flags,
+    messages: &'a mut Vec<String>,
+    /// Free values whose covariance means little.
+    doubtful: Vec<usize>,
+}
+
+impl Raised<'_> {
+    fn raise(&mut self, flag: u32, free: &[usize], message: String) {
+        self.flags.raise(flag);
+        self.messages.push(message);
+        self.doubtful.extend_from_slice(free);
+    }
+}
+
+fn bounds(problem: &Problem, found: &Found, raised: &mut Raised<'_>) {
     for &i in &found.free {
         let value = &problem.free[i];
         let at = found.parameters[value.parameter];
@@ -108,15 +134,15 @@ fn bounds(problem: &Problem, found: &Found, flags: &mut Flags, messages: &mut Ve
         } else {
             continue;
         };
-        flags.raise(Flags::AT_BOUND);
-        messages.push(format!(
+        let message = format!(
             "{} stands at its {side} bound",
             problem.quantities()[i].name
-        ));
+        );
+        raised.raise(Flags::AT_BOUND, &[i], message);
     }
 }
 
-fn contrast(problem: &Problem, found: &Found, flags: &mut Flags, messages: &mut Vec<String>) {
+fn contrast(problem: &Problem, found: &Found, raised: &mut Raised<'_>) {
     if !matches!(
         problem.engine.sightline().background,
         Background::Blackbody { .. }
@@ -173,8 +199,20 @@ fn contrast(problem: &Problem, found: &Found, flags: &mut Flags, messages: &mut 
         }
         let sigma = variance.max(0.0).sqrt();
         if contrast.abs() < CONTRAST * sigma || contrast.abs() < 1e-9 * light {
-            flags.raise(Flags::NO_CONTRAST);
-            messages.push(format!(
+            let involved: Vec<usize> = found
+                .free
+                .iter()
+                .copied()
+                .filter(|&i| {
+                    let value = &problem.free[i];
+                    !found.absent_columns.contains(&i)
+                        && (value.cloud == Some(cloud) && value.kind != Kind::Velocity
+                            || slopes
+                                .iter()
+                                .any(|&(position, _)| found.free[position] == i))
+                })
+                .collect();
+            let message = format!(
                 "cloud {} is as hot as the background within {:.1} standard deviations",
                 cloud + 1,
                 if sigma > 0.0 {
@@ -182,12 +220,13 @@ fn contrast(problem: &Problem, found: &Found, flags: &mut Flags, messages: &mut 
                 } else {
                     0.0
                 }
-            ));
+            );
+            raised.raise(Flags::NO_CONTRAST, &involved, message);
         }
     }
 }
 
-fn saturation(problem: &Problem, found: &Found, flags: &mut Flags, messages: &mut Vec<String>) {
+fn saturation(problem: &Problem, found: &Found, raised: &mut Raised<'_>) {
     for (position, &i) in found.free.iter().enumerate() {
         let value = &problem.free[i];
         let (Kind::Column, Some(cloud), Some(species)) = (value.kind, value.cloud, value.species)
@@ -207,16 +246,16 @@ fn saturation(problem: &Problem, found: &Found, flags: &mut Flags, messages: &mu
         let faintest = seen.iter().copied().fold(f64::INFINITY, f64::min);
         let open = found.covariance.sigma(position) > OPEN;
         if !seen.is_empty() && (faintest > OPAQUE || (faintest > BLACK && open)) {
-            flags.raise(Flags::SATURATED);
-            messages.push(format!(
+            let message = format!(
                 "every line of {} that shows is opaque (optical depth {faintest:.3} and more)",
                 problem.species[cloud][species]
-            ));
+            );
+            raised.raise(Flags::SATURATED, &[i], message);
         }
     }
 }
 
-fn ties(problem: &Problem, found: &Found, flags: &mut Flags, messages: &mut Vec<String>) {
+fn ties(problem: &Problem, found: &Found, raised: &mut Raised<'_>) {
     let quantities = problem.quantities();
     for (a, &i) in found.free.iter().enumerate() {
         if found.absent_columns.contains(&i) {
@@ -224,43 +263,49 @@ fn ties(problem: &Problem, found: &Found, flags: &mut Flags, messages: &mut Vec<
         }
         let value = &problem.free[i];
         if !found.covariance.sigma(a).is_finite() {
-            flags.raise(Flags::DEGENERATE);
-            messages.push(format!("{} has no effect on the data", quantities[i].name));
+            let message = format!("{} has no effect on the data", quantities[i].name);
+            raised.raise(Flags::DEGENERATE, &[i], message);
             continue;
         }
         for (b, &j) in found.free.iter().enumerate().skip(a + 1) {
             let correlation = found.covariance.correlation(a, b);
             let loose = loose(found, a, value.kind) || loose(found, b, problem.free[j].kind);
             if correlation.abs() > INSEPARABLE || (correlation.abs() > TIED && loose) {
-                flags.raise(Flags::DEGENERATE);
-                messages.push(format!(
+                let message = format!(
                     "{} and {}: correlation {correlation:.4}",
                     quantities[i].name, quantities[j].name
-                ));
+                );
+                raised.raise(Flags::DEGENERATE, &[i, j], message);
             }
         }
     }
     // Three or more values may be tied with no two of them strongly correlated.
-    if !flags.has(Flags::DEGENERATE) && found.covariance.smallest_eigenvalue < 1e-9 {
-        flags.raise(Flags::DEGENERATE);
-        let names: Vec<&str> = found
+    if !raised.flags.has(Flags::DEGENERATE) && found.covariance.smallest_eigenvalue < 1e-9 {
+        let tied: Vec<usize> = found
             .free
             .iter()
             .zip(&found.covariance.weakest_direction)
             .filter(|(_, part)| part.abs() > 0.2)
-            .map(|(&i, _)| quantities[i].name.as_str())
+            .map(|(&i, _)| i)
             .collect();
-        messages.push(format!(
-            "only a combination is fixed of: {}",
-            names.join(", ")
-        ));
+        let names: Vec<&str> = tied.iter().map(|&i| quantities[i].name.as_str()).collect();
+        let message = format!("only a combination is fixed of: {}", names.join(", "));
+        raised.raise(Flags::DEGENERATE, &tied, message);
     }
 }
 
 /// Raises `degenerate` for values that the data leave open over much of their range, alone or because
 /// another minimum fits as well.
-fn open_values(problem: &Problem, found: &Found, flags: &mut Flags, messages: &mut Vec<String>) {
+fn open_values(problem: &Problem, found: &Found, raised: &mut Raised<'_>) {
     let quantities = problem.quantities();
+    // The same clouds in another order are no other answer.
+    let in_order = |parameters: &[f64]| {
+        problem
+            .twins_in_order(parameters)
+            .unwrap_or_else(|| parameters.to_vec())
+    };
+    let here = in_order(&found.parameters);
+    let rivals: Vec<Vec<f64>> = found.rivals.iter().map(|rival| in_order(rival)).collect();
     for (position, &i) in found.free.iter().enumerate() {
         let value = &problem.free[i];
         let hidden = value
@@ -269,7 +314,7 @@ fn open_values(problem: &Problem, found: &Found, flags: &mut Flags, messages: &m
         if hidden || found.absent_columns.contains(&i) {
             continue;
         }
-        let at = found.parameters[value.parameter];
+        let at = here[value.parameter];
         let sigma = found.covariance.sigma(position);
         let enough = match value.kind {
             Kind::Temperature | Kind::Column | Kind::Scale => {
@@ -280,20 +325,19 @@ fn open_values(problem: &Problem, found: &Found, flags: &mut Flags, messages: &m
             _ => continue,
         };
         if sigma > enough {
-            flags.raise(Flags::DEGENERATE);
-            messages.push(format!("{} is left open by the data", quantities[i].name));
-        } else if let Some(rival) = found
-            .rivals
+            let message = format!("{} is left open by the data", quantities[i].name);
+            raised.raise(Flags::DEGENERATE, &[i], message);
+        } else if let Some(rival) = rivals
             .iter()
             .find(|rival| (rival[value.parameter] - at).abs() > (5.0 * sigma).max(0.5 * enough))
         {
-            flags.raise(Flags::DEGENERATE);
-            messages.push(format!(
+            let message = format!(
                 "{} = {:.5} {} fits as well",
                 quantities[i].name,
                 value.kind.reported(rival[value.parameter]),
                 quantities[i].units
-            ));
+            );
+            raised.raise(Flags::DEGENERATE, &[i], message);
         }
     }
 }

@@ -144,6 +144,18 @@ pub struct CloudSetup {
     pub column_lines: Vec<usize>,
 }
 
+impl CloudSetup {
+    /// Whether two clouds are described alike, wherever in the file they stand.
+    pub fn describes_the_same_as(&self, other: &CloudSetup) -> bool {
+        let CloudSetup { column_lines, .. } = self;
+        let moved = CloudSetup {
+            column_lines: column_lines.clone(),
+            ..other.clone()
+        };
+        *self == moved
+    }
+}
+
 /// One `[[species]]`: a table of the user's own.
 #[derive(Debug, Clone, PartialEq)]
 pub struct UserSpecies {

@@ -6,10 +6,12 @@
 
 mod background;
 mod filter;
+mod further;
 mod state;
 mod velocity;
 
 pub(crate) use background::{without_gas, without_gas_of};
+pub(crate) use further::one_more_cloud;
 
 use crate::problem::{Problem, Workspace};
 use filter::Filtered;

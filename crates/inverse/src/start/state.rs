@@ -3,6 +3,7 @@
 use super::filter::{Filtered, strongest};
 use super::velocity::contrast;
 use crate::problem::Problem;
+use backlit_forward::sightline::CloudLayout;
 use backlit_forward::transition::{Transition, doppler_width_squared};
 use backlit_units::constants::SPEED_OF_LIGHT_M_PER_S;
 use backlit_units::doppler::wavelength_factor;
@@ -30,13 +31,24 @@ pub fn temperatures_k(problem: &Problem, base: &[f64], cloud: usize, count: usiz
 }
 
 /// One point of the grid.
-struct State {
+pub struct State {
     badness: f64,
     ln_temperature: f64,
     turbulence_squared: f64,
     columns: Vec<f64>,
     /// Brighter or darker than the background.
     bright: bool,
+}
+
+impl State {
+    /// Writes the state into a set of parameters.
+    pub fn put(&self, place: &CloudLayout, parameters: &mut [f64]) {
+        parameters[place.temperature()] = self.ln_temperature;
+        parameters[place.turbulence_squared()] = self.turbulence_squared;
+        for (s, &column) in self.columns.iter().enumerate() {
+            parameters[place.column(s)] = column;
+        }
+    }
 }
 
 /// Full sets of parameters for given velocities of the clouds; the best first.
@@ -55,11 +67,7 @@ pub fn candidates(
             for set in &sets {
                 let mut set = set.clone();
                 set[place.velocity()] = velocity;
-                set[place.temperature()] = state.ln_temperature;
-                set[place.turbulence_squared()] = state.turbulence_squared;
-                for (s, &column) in state.columns.iter().enumerate() {
-                    set[place.column(s)] = column;
-                }
+                state.put(place, &mut set);
                 longer.push(set);
             }
         }
@@ -70,7 +78,8 @@ pub fn candidates(
     sets
 }
 
-fn search(
+/// States of one cloud at a velocity, the best first.
+pub fn search(
     problem: &Problem,
     filtered: &[Filtered],
     base: &[f64],

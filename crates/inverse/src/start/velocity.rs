@@ -65,7 +65,7 @@ pub fn candidates(problem: &Problem, filtered: &[Filtered], base: &[f64]) -> Vec
 }
 
 /// Peaks of the matched filter between two velocities, with their strength (a squared signal-to-noise).
-fn search(
+pub fn search(
     problem: &Problem,
     filtered: &[Filtered],
     base: &[f64],
