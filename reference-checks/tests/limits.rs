@@ -37,11 +37,12 @@ fn spectrum(name: &str, setup: &str, wavelength_nm: &[f64]) -> Vec<f64> {
     Case::write(&folder, name, setup, &species(), wavelength_nm.to_vec()).predict()
 }
 
+/// With a model tolerance below what the limits ask for: a channel may be off by that part of the deepest line.
 fn setup(instrument: &str, background_k: f64, gas_k: f64, column_cm2: f64) -> String {
     format!(
         "[instrument]\n{instrument}\n[background]\nlight = \"blackbody\"\ntemperature_K = {background_k}\n\
          [[cloud]]\ntemperature_K = {gas_k}\nvelocity_km_s = 30\nturbulence_km_s = 2\n\
-         [cloud.column_cm2]\n\"Xx I\" = {column_cm2:e}\n"
+         [cloud.column_cm2]\n\"Xx I\" = {column_cm2:e}\n[fit]\nmodel_tolerance = 1e-8\n"
     )
 }
 
@@ -89,8 +90,10 @@ fn thick_gas_shines_as_a_blackbody() {
         );
         for (nm, value) in wavelength_nm.iter().zip(&intensity) {
             let expected = planck_w_m2_sr_nm(*nm, gas_k);
+            // Of the depth of the line: the light that is missing or added.
+            let depth = (expected - planck_w_m2_sr_nm(*nm, background_k)).abs();
             assert!(
-                (value / expected - 1.0).abs() < 1e-6,
+                (value - expected).abs() < 1e-6 * depth,
                 "{nm} nm at {gas_k} K: {value}, not {expected}"
             );
         }

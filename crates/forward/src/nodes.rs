@@ -110,12 +110,10 @@ impl Shape {
             );
         }
         if wing_edge > 2.0 {
-            let softness = 0.35 * wing_edge;
-            bump(
-                wing_edge,
-                std::f64::consts::PI.powi(2) / digits * softness,
-                2.0 * softness,
-            );
+            // exp(-(w/x)²) has the transform exp(-0.945 (w k)^(2/3)), by its saddle point at |x| = 0.4 w.
+            let spacing =
+                2.0 * std::f64::consts::PI * wing_edge * (digits / 0.945).powf(-1.5);
+            bump(0.6 * wing_edge, 1.2 * spacing, 0.8 * wing_edge);
         }
         Feature {
             centre,
