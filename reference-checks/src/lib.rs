@@ -9,6 +9,7 @@
 pub mod bound;
 pub mod case;
 pub mod chance;
+pub mod draws;
 pub mod plain;
 pub mod program;
 pub mod python;

@@ -274,6 +274,9 @@ fn difference(predicted: &[f64], answer: &Value) -> f64 {
         .fold(0.0, f64::max)
 }
 
+/// What turns a case into a spectrum.
+type Model = fn(&Case) -> Vec<f64>;
+
 fn compare(subject: &str, make: fn(&Path) -> Vec<Case>) {
     let folder = Path::new(env!("CARGO_TARGET_TMPDIR")).join(format!("brute-force-{subject}"));
     let cases = make(&folder);
@@ -287,7 +290,7 @@ fn compare(subject: &str, make: fn(&Path) -> Vec<Case>) {
         return;
     }
     let answers: Vec<Value> = serde_json::from_str(&fs::read_to_string(&answers).unwrap()).unwrap();
-    let models: [(&str, f64, fn(&Case) -> Vec<f64>); 2] = [
+    let models: [(&str, f64, Model); 2] = [
         ("plain model", ALLOWED_PLAIN, Case::observe_plainly),
         ("program", ALLOWED, Case::predict),
     ];
