@@ -199,7 +199,10 @@ fn a_cube_of_the_wrong_rank() {
 fn a_cube_of_mismatched_lengths() {
     let desk = Desk::laid();
     write_cube(&desk.path("c.h5"), &[589.0, 589.1], (1, 2, 3), UNIT);
-    map_refuses(&desk, &["c.h5", "(1, 2, 3)", "(ny, nx, 2)"]);
+    map_refuses(
+        &desk,
+        &["c.h5", "(1, 2, 3)", "(ny, nx, 2)", "hint: the last axis"],
+    );
 }
 
 #[test]

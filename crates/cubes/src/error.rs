@@ -350,7 +350,7 @@ pub enum CubesError {
         place: Place,
     },
     /// A dataset of other dimensions than needed.
-    #[error("{}: dataset /{dataset} has shape {}, expected {expected}\nhint: {}", path.display(), dimensions(found), rank_hint(dataset, found))]
+    #[error("{}: dataset /{dataset} has shape {}, expected {expected}\nhint: {}", path.display(), dimensions(found), rank_hint(dataset, found, expected))]
     WrongShape {
         /// The file.
         path: PathBuf,
@@ -576,11 +576,12 @@ fn direction(rising: bool) -> &'static str {
     if rising { "rising" } else { "falling" }
 }
 
-fn rank_hint(dataset: &str, found: &[usize]) -> &'static str {
+fn rank_hint(dataset: &str, found: &[usize], expected: &str) -> &'static str {
     match (dataset, found.len()) {
         ("intensity", 2) => "a series of nt spectra is a cube of shape (1, nt, n)",
         ("intensity", 1) => "this is a single spectrum; use `backlit fit`",
-        ("intensity", 3) => "this is a cube; use `backlit map`",
+        // Not where a cube was expected, of another length.
+        ("intensity", 3) if !expected.contains(',') => "this is a cube; use `backlit map`",
         _ => "the last axis of a cube is the wavelength, and all datasets share its length",
     }
 }
