@@ -9,6 +9,7 @@ pub mod clouds;
 pub mod coordinate;
 mod error;
 mod fit;
+pub mod identify;
 mod intervals;
 pub mod noise;
 mod problem;
