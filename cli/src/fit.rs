@@ -51,7 +51,7 @@ pub struct Fit {
     /// The ends are where chi-square, with all other values refitted, is 1 above
     /// its least. Without this option only values whose uncertainty a flag calls
     /// invalid get an interval. An end that is open is `-`, null in JSON.
-    #[arg(long, verbatim_doc_comment)]
+    #[arg(long)]
     intervals: bool,
 
     /// Find how many clouds there are, such as up-to-3
@@ -60,7 +60,7 @@ pub struct Fit {
     /// Bayesian information criterion; a further cloud must also be worth the
     /// search for it. The clouds are numbered by rising velocity where their
     /// order makes no difference.
-    #[arg(long, value_name = "up-to-N", value_parser = clouds::most, verbatim_doc_comment)]
+    #[arg(long, value_name = "up-to-N", value_parser = clouds::most)]
     clouds: Option<usize>,
 }
 

@@ -66,7 +66,7 @@ pub struct Map {
     ///
     /// <name>_low and <name>_high: where chi-square, with all other values
     /// refitted, is 1 above its least. Takes several times as long.
-    #[arg(long, verbatim_doc_comment)]
+    #[arg(long)]
     intervals: bool,
 }
 

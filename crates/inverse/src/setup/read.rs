@@ -313,6 +313,9 @@ fn background(path: &Path, section: &Section<'_, '_>) -> Result<Background, Setu
                 "light = \"measured\"",
                 "the file says how bright the light is; leave the temperature out",
             )?;
+            const AS_MEASURED: &str = "the light is taken as the file has it: leave the key out";
+            refuse(&dilution, "light = \"measured\"", AS_MEASURED)?;
+            refuse(&shape_terms, "light = \"measured\"", AS_MEASURED)?;
             let name = file
                 .as_ref()
                 .ok_or_else(|| SetupError::MissingKey {

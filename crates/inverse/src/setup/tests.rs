@@ -523,6 +523,19 @@ fn a_setup_without_light_and_gas_is_refused() {
 }
 
 #[test]
+fn a_measured_light_is_neither_diluted_nor_bent() {
+    for key in ["dilution = 0.5", "shape_terms = 2"] {
+        let text = format!("[background]\nlight = \"measured\"\nfile = \"x.csv\"\n{key}\n");
+        let error = Setup::parse(&text, "s.toml").unwrap_err().to_string();
+        assert!(
+            error.contains("has no meaning beside light = \"measured\"")
+                && error.contains("line 4"),
+            "{error}"
+        );
+    }
+}
+
+#[test]
 fn a_relative_unit_of_the_data_needs_an_open_scale_too() {
     let relative: IntensityUnit = "counts".parse().unwrap();
     let fixed = Setup::parse("[background]\ntemperature_K = 300\n", "s.toml").unwrap();
