@@ -35,6 +35,7 @@ pub struct Arguments {
 pub enum Command {
     Species(crate::species::Species),
     Predict(crate::predict::Predict),
+    Identify(crate::identify::Identify),
     Fit(crate::fit::Fit),
     Map(crate::map::Map),
 }

@@ -79,6 +79,17 @@ pub enum Failure {
         /// The first of them, in the file's medium.
         first_nm: f64,
     },
+    /// A spectrum with too little in it to tell lines from light.
+    #[error(
+        "{} has {usable} usable channels, an identification needs at least 41\n\
+         hint: give a wider piece of the spectrum, or less of a mask or of `use_nm`", path.display()
+    )]
+    TooShort {
+        /// The file.
+        path: PathBuf,
+        /// Channels that are not masked.
+        usable: usize,
+    },
     /// A grid that makes no sense.
     #[error(
         "a step of {step_nm} nm divides {low_nm}..{high_nm} nm into {channels:.0} channels, allowed are 2..=10000000\n\

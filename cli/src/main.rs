@@ -10,6 +10,8 @@ mod failure;
 mod fit;
 mod flags;
 mod grid;
+mod identify;
+mod identify_plot;
 mod interrupt;
 mod map;
 mod noise;
@@ -61,6 +63,7 @@ fn run(arguments: &Arguments, console: &Console) -> Result<(), Failure> {
         Command::Species(command) => command.run(console),
         Command::Predict(command) => pool.install(|| command.run(console)),
         Command::Fit(command) => command.run(console),
+        Command::Identify(command) => command.run(console),
         Command::Map(command) => command.run(console, &pool),
     }
 }

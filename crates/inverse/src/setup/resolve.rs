@@ -64,7 +64,12 @@ impl Setup {
             .collect()
     }
 
-    fn own_species(&self) -> Result<Vec<Arc<Species>>, SetupError> {
+    /// The species of the `[[species]]` sections, their tables read.
+    ///
+    /// # Errors
+    ///
+    /// [`SetupError::UserTables`] for tables that cannot be used.
+    pub fn own_species(&self) -> Result<Vec<Arc<Species>>, SetupError> {
         self.species
             .iter()
             .map(|own| {
