@@ -59,7 +59,7 @@ impl PixelValues {
                     .ok_or_else(|| {
                         wrong(
                             column,
-                            format!("a whole number 0..{end}"),
+                            format!("a whole number from 0 to {}", end - 1),
                             "rows and columns count from 0; --cube NY,NX gives their number",
                         )
                     })
