@@ -38,6 +38,7 @@ pub enum Command {
     Identify(crate::identify::Identify),
     Fit(crate::fit::Fit),
     Map(crate::map::Map),
+    Limits(crate::limits::Limits),
 }
 
 #[cfg(test)]

@@ -90,6 +90,17 @@ pub enum Failure {
         /// Channels that are not masked.
         usable: usize,
     },
+    /// A spectrum whose noise nobody knows.
+    #[error(
+        "{} has no uncertainties, and its {usable} usable channels do not show their noise\n\
+         hint: add a column `uncertainty` (1 sigma)", path.display()
+    )]
+    NoNoise {
+        /// The file.
+        path: PathBuf,
+        /// Channels with a value.
+        usable: usize,
+    },
     /// A grid that makes no sense.
     #[error(
         "a step of {step_nm} nm divides {low_nm}..{high_nm} nm into {channels:.0} channels, allowed are 2..=10000000\n\

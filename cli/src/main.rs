@@ -13,6 +13,7 @@ mod grid;
 mod identify;
 mod identify_plot;
 mod interrupt;
+mod limits;
 mod map;
 mod noise;
 mod observed;
@@ -64,6 +65,7 @@ fn run(arguments: &Arguments, console: &Console) -> Result<(), Failure> {
         Command::Predict(command) => pool.install(|| command.run(console)),
         Command::Fit(command) => command.run(console),
         Command::Identify(command) => command.run(console),
+        Command::Limits(command) => command.run(console),
         Command::Map(command) => command.run(console, &pool),
     }
 }

@@ -11,6 +11,7 @@ mod error;
 mod fit;
 pub mod identify;
 mod intervals;
+pub mod limits;
 pub mod noise;
 mod problem;
 mod robust;
