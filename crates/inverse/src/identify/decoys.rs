@@ -59,6 +59,16 @@ pub struct Null {
     pooled: Vec<f64>,
     /// Where the exponential tail begins, its share of decoys, its scale.
     tail: (f64, f64, f64),
+    decoys: Vec<Reached>,
+}
+
+/// What one decoy reaches.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Reached {
+    /// Its best evidence, in nats.
+    pub evidence: f64,
+    /// How many of its lines count as seen.
+    pub seen: usize,
 }
 
 /// Share of the decoys that the tail is fitted to.
@@ -66,13 +76,14 @@ const TAIL_SHARE: f64 = 0.03;
 
 impl Null {
     /// From the evidence of each species' decoys; a species without decoys has an empty row.
-    pub fn new(decoys: &[Vec<f64>]) -> Null {
-        let moments = |row: &[f64]| {
-            let mean = row.iter().sum::<f64>() / row.len() as f64;
-            let variance = row.iter().map(|d| (d - mean).powi(2)).sum::<f64>() / row.len() as f64;
+    pub fn new(decoys: &[Vec<Reached>]) -> Null {
+        let moments = |row: &[Reached]| {
+            let mean = row.iter().map(|d| d.evidence).sum::<f64>() / row.len() as f64;
+            let variance =
+                row.iter().map(|d| (d.evidence - mean).powi(2)).sum::<f64>() / row.len() as f64;
             (mean, variance)
         };
-        let rows: Vec<&Vec<f64>> = decoys.iter().filter(|row| !row.is_empty()).collect();
+        let rows: Vec<&Vec<Reached>> = decoys.iter().filter(|row| !row.is_empty()).collect();
         let usual = rows.iter().map(|row| moments(row).1).sum::<f64>() / rows.len().max(1) as f64;
         let own: Vec<(f64, f64)> = decoys
             .iter()
@@ -85,12 +96,15 @@ impl Null {
                 (mean, (0.5 * (variance + usual)).sqrt().max(0.3))
             })
             .collect();
-        let mut pooled: Vec<f64> = decoys
+        let mut all: Vec<(f64, usize)> = decoys
             .iter()
             .zip(&own)
-            .flat_map(|(row, (mean, sd))| row.iter().map(move |d| (d - mean) / sd))
+            .flat_map(|(row, (mean, sd))| {
+                row.iter().map(move |d| ((d.evidence - mean) / sd, d.seen))
+            })
             .collect();
-        pooled.sort_by(|a, b| b.total_cmp(a));
+        all.sort_by(|a, b| b.0.total_cmp(&a.0));
+        let pooled: Vec<f64> = all.iter().map(|d| d.0).collect();
         let count = ((TAIL_SHARE * pooled.len() as f64) as usize).max(5);
         let tail = if pooled.len() > 2 * count {
             let start = pooled[count];
@@ -99,7 +113,29 @@ impl Null {
         } else {
             (0.0, 1.0, 1.0)
         };
-        Null { own, pooled, tail }
+        Null {
+            own,
+            pooled,
+            tail,
+            decoys: decoys.iter().flatten().copied().collect(),
+        }
+    }
+
+    /// How many species chance makes reach a rate, an evidence and two lines, together.
+    pub fn expected_by_chance(
+        &self,
+        species: impl Iterator<Item = usize>,
+        rate: f64,
+        least_evidence: f64,
+    ) -> f64 {
+        let strong = || self.decoys.iter().filter(|d| d.evidence >= least_evidence);
+        // One of two where no decoy tells.
+        let with_two_lines = (strong().filter(|d| d.seen >= 2).count() as f64 + 1.0)
+            / (strong().count() as f64 + 2.0);
+        with_two_lines
+            * species
+                .map(|index| self.rate(index, least_evidence).min(rate))
+                .sum::<f64>()
     }
 
     /// How often a decoy of that species reaches this evidence.

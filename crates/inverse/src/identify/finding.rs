@@ -122,7 +122,8 @@ pub struct Identification {
     pub fwhm_is_estimated: bool,
     /// Whether the noise was estimated from the data.
     pub noise_is_estimated: bool,
-    /// Expected share of false ones among those called present; NaN if there are none.
+    /// Share of those called present that chance is expected to make: what decoys do, over all candidates, in this
+    /// spectrum. NaN if none is present.
     pub false_discovery_rate: f64,
     /// The smooth light under the lines, one a channel, in the data's unit.
     pub continuum: Vec<f64>,

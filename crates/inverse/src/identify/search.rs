@@ -1,7 +1,7 @@
 //! The search: one velocity for all, the strongest species first, then what they leave unexplained.
 
 use super::continuum::{Flattened, flatten, median};
-use super::decoys::{DECOYS, Displacement, Null};
+use super::decoys::{DECOYS, Displacement, Null, Reached};
 use super::evidence::{Best, Expectation, Worth, search};
 use super::features::{self, Features, Peak};
 use super::finding::{Finding, Identification, LineFound, LineState, Verdict};
@@ -207,22 +207,50 @@ fn best_of(
 }
 
 fn null(sky: &Sky, pool: &[Candidate], near: &[i32]) -> Null {
-    let decoys: Vec<Vec<f64>> = pool
+    let decoys: Vec<Vec<Reached>> = pool
         .iter()
         .enumerate()
         .map(|(index, candidate)| {
             (0..DECOYS)
                 .map(|decoy| {
                     let moved = Displacement::new(&sky.grid, index, decoy);
-                    best_of(sky, candidate, near, &|cell| moved.place(cell))
-                        .1
-                        .evidence
+                    let place = |cell| moved.place(cell);
+                    let (s, best) = best_of(sky, candidate, near, &place);
+                    Reached {
+                        evidence: best.evidence,
+                        seen: seen(sky, candidate, s, &best, &place),
+                    }
                 })
-                .filter(|evidence| evidence.is_finite())
+                .filter(|reached| reached.evidence.is_finite())
                 .collect()
         })
         .collect();
     Null::new(&decoys)
+}
+
+/// Lines of the best pattern that count as seen.
+fn seen(
+    sky: &Sky,
+    candidate: &Candidate,
+    s: usize,
+    best: &Best,
+    place: &impl Fn(i32) -> i32,
+) -> usize {
+    let Some(pattern) = candidate.patterns[s].get(best.pattern) else {
+        return 0;
+    };
+    pattern
+        .lines
+        .iter()
+        .filter(|line| usize::from(line.below) <= best.top)
+        .filter(|line| {
+            let cell = place(line.cell) + best.shift;
+            let code = sky.maps[s].at(cell);
+            code < BLENDED
+                && sky.maps[s].height_at(cell) >= SEEN
+                && sky.worths[s].of(best.top - usize::from(line.below), code) > 0.0
+        })
+        .count()
 }
 
 fn judge(
@@ -243,8 +271,16 @@ fn judge(
     // Species, sign, best, lines as they were found, rate.
     let mut accepted: Vec<(usize, Finding)> = Vec::new();
     let mut rest: Vec<Finding>;
-    loop {
+    // What chance is expected to make, at the round in which it makes most.
+    let mut by_chance: f64 = 0.0;
+    let by_chance = loop {
         let null = null(&sky, pool, near);
+        let others = (0..pool.len()).filter(|index| {
+            let testable = pool[*index].patterns.iter().any(|p| !p.is_empty());
+            testable && accepted.iter().all(|(done, _)| done != index)
+        });
+        let rate = choices.false_discovery_rate * (accepted.len() + 1) as f64 / testable as f64;
+        by_chance = by_chance.max(null.expected_by_chance(others, rate, LEAST_EVIDENCE));
         let mut chosen: Option<(usize, usize, Best, Finding)> = None;
         let mut strongest = f64::NEG_INFINITY;
         rest = Vec::new();
@@ -283,7 +319,7 @@ fn judge(
             rest.push(finding);
         }
         let Some((index, s, best, mut finding)) = chosen else {
-            break;
+            break by_chance;
         };
         finding.verdict = Verdict::Present;
         if accepted.is_empty() {
@@ -291,7 +327,7 @@ fn judge(
         }
         claim(&mut sky, &pool[index], s, &best, expectation);
         accepted.push((index, finding));
-    }
+    };
     for finding in &mut rest {
         let seen = finding.count(LineState::Seen);
         finding.verdict = if !finding.evidence.is_finite() {
@@ -308,10 +344,6 @@ fn judge(
         }
     }
     let present = accepted.len() as f64;
-    let worst = accepted
-        .iter()
-        .map(|(_, f)| f.false_alarm_rate)
-        .fold(0.0, f64::max);
     let shared: Vec<(f64, f64)> = accepted
         .iter()
         .filter_map(|(_, f)| f.velocity_m_per_s.map(|v| (v, f.evidence)))
@@ -335,7 +367,7 @@ fn judge(
         fwhm_is_estimated: choices.width == Width::Unknown,
         noise_is_estimated: sky.flattened.noise_is_estimated,
         false_discovery_rate: if present > 0.0 {
-            (worst * testable as f64 / present).min(1.0)
+            (by_chance / present).min(1.0)
         } else {
             f64::NAN
         },
