@@ -155,3 +155,31 @@ fn band_strengths_are_the_published_ones() {
     }
     assert!(wrong.is_empty(), "{}", wrong.join("\n"));
 }
+
+#[test]
+fn the_21_cm_line_has_the_usual_optical_depth() {
+    // N(H I) = 1.823e18 cm^-2 K^-1 (km/s)^-1 T_spin times the integral of tau over velocity, the
+    // usual factor, which belongs to A = 2.8688e-15 s^-1; the A of Gould (1994) makes it 1.8133e18 (from memory).
+    let hydrogen = Catalogue::builtin().get("H I").unwrap();
+    let line = hydrogen.lines.last().unwrap();
+    let frequency_hz = SPEED_OF_LIGHT_M_PER_S / line.wavelength_vac_m;
+    assert!((frequency_hz / 1e6 - 1_420.405_75).abs() < 1e-5);
+    for spin_temperature_k in [20.0, 100.0, 8_000.0] {
+        let kt_j = 1.380_649e-23 * spin_temperature_k;
+        let q = hydrogen.partition_function(spin_temperature_k).ln_q.exp();
+        assert!((q - 2.0).abs() < 0.01, "{q}");
+        let column_m2 = 1e24;
+        let lower_m2 = column_m2 * line.g_lower / q;
+        let stimulated = 1.0 - (-6.626_070_15e-34 * frequency_hz / kt_j).exp();
+        // Optical depth times velocity, m/s: the integral over frequency times the wavelength.
+        let depth_m_per_s = lower_m2 * line.g_upper / line.g_lower * line.wavelength_vac_m.powi(3)
+            / (8.0 * std::f64::consts::PI)
+            * line.a_ki_per_s
+            * stimulated;
+        let column_cm2 = 1.823e18 * (2.8688e-15 / 2.8843e-15) * spin_temperature_k * depth_m_per_s / 1e3;
+        assert!(
+            (column_cm2 / 1e20 - 1.0).abs() < 2e-3,
+            "{spin_temperature_k} K: {column_cm2:e}"
+        );
+    }
+}

@@ -1,12 +1,14 @@
 //! Hydrogen and hydrogen-like ions from theory: energies, wavelengths and transition probabilities.
 //!
 //! Levels are those of one electron about a nucleus of finite mass, with the Dirac fine structure and the Lamb shift;
-//! transition probabilities come from exact radial integrals. No hyperfine structure, no two-photon decay of 2s.
+//! transition probabilities come from exact radial integrals. No hyperfine structure but that of the ground level of H I, which
+//! makes the 21 cm line; no two-photon decay of 2s.
 //!
 //! No level above n = 12 counts: at n = 12 the electron is 144 Bohr radii away, and no gas of interest leaves it
 //! alone out there. Without such a limit the partition function would have no value at all.
 
 mod energy;
+mod hyperfine;
 mod lines;
 mod radial;
 
@@ -75,14 +77,14 @@ impl Nucleus {
 /// The species of a nucleus with one electron, levels up to [`N_MAX`], lines merged where closer than 0.3 km/s.
 pub fn species(nucleus: Nucleus) -> Species {
     let mass_kg = (nucleus.mass_in_electrons() + 1.0) * ELECTRON_MASS_U * ATOMIC_MASS_KG;
-    let levels = (1..=N_MAX).map(|n| shell(nucleus, n)).collect();
-    Species::new(
-        nucleus.species_name(),
-        mass_kg,
-        lines::merged(nucleus, N_MAX),
-        levels,
-    )
-    .with_ionization_energy_j(energy::limit_j(nucleus))
+    let mut levels: Vec<Level> = (1..=N_MAX).map(|n| shell(nucleus, n)).collect();
+    let mut lines = lines::merged(nucleus, N_MAX);
+    if nucleus == Nucleus::Proton {
+        levels.splice(..1, hyperfine::ground_levels());
+        lines.push(hyperfine::line_21_cm());
+    }
+    Species::new(nucleus.species_name(), mass_kg, lines, levels)
+        .with_ionization_energy_j(energy::limit_j(nucleus))
 }
 
 /// A whole shell: 2 n^2 states at their mean energy; its width, at most kT of 0.5 K, is no matter to the partition function.
