@@ -12,7 +12,7 @@ pub enum InverseError {
     Setup(#[from] SetupError),
     /// No channel lies in the ranges to be used.
     #[error(
-        "no channel lies within the ranges of `spectrum.use_nm` ({}): the data reach from {low_nm:.4} to {high_nm:.4} nm\n  hint: give ranges in nm, in the medium of the data, that the data cover", path.display()
+        "no channel lies within the ranges of `spectrum.use_nm` ({}): the data reach from {low_nm:.4} to {high_nm:.4} nm\nhint: give ranges in nm, in the medium of the data, that the data cover", path.display()
     )]
     NoChannels {
         /// The setup file.
@@ -24,7 +24,7 @@ pub enum InverseError {
     },
     /// A measured background has another number of channels than the data.
     #[error(
-        "the measured background has {got} values, the data have {need} channels\n  hint: give `background.file` on the wavelengths of the data"
+        "the measured background has {got} values, the data have {need} channels\nhint: give `background.file` on the wavelengths of the data"
     )]
     BackgroundLength {
         /// Values of the background.
@@ -33,7 +33,7 @@ pub enum InverseError {
         need: usize,
     },
     /// A prediction needs a number that the setup leaves open.
-    #[error("`{name}` has no number to predict with ({})\n  hint: give it a known value, or `start = ...` beside `find`", path.display())]
+    #[error("`{name}` has no number to predict with ({})\nhint: give it a known value, or `start = ...` beside `find`", path.display())]
     NoStart {
         /// The quantity.
         name: String,
@@ -41,7 +41,7 @@ pub enum InverseError {
         path: PathBuf,
     },
     /// More clouds than the model passes.
-    #[error("{got} clouds on one sightline, at most {most} ({})\n  hint: leave out clouds that the data cannot tell apart", path.display())]
+    #[error("{got} clouds on one sightline, at most {most} ({})\nhint: leave out clouds that the data cannot tell apart", path.display())]
     TooManyClouds {
         /// Clouds of the setup.
         got: usize,
@@ -51,7 +51,7 @@ pub enum InverseError {
         path: PathBuf,
     },
     /// The number of clouds is to be found, but the setup does not have one cloud to copy.
-    #[error("{got} clouds where the number of clouds is to be found, exactly 1 is needed ({})\n  hint: describe one [[cloud]]; the others get the same bounds", path.display())]
+    #[error("{got} clouds where the number of clouds is to be found, exactly 1 is needed ({})\nhint: describe one [[cloud]]; the others get the same bounds", path.display())]
     CloudToCopy {
         /// Clouds of the setup.
         got: usize,
