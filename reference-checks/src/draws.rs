@@ -25,6 +25,22 @@ impl Draws {
         }
     }
 
+    /// * `bare`: the truth without its gas.
+    /// * `sigmas`: how far the deepest line stands out of the noise of a channel.
+    pub fn of_lines(truth: &Case, bare: &Case, question: &Case, sigmas: f64) -> Draws {
+        let exact = truth.observe_plainly();
+        let deepest = exact
+            .iter()
+            .zip(bare.observe_plainly())
+            .map(|(with, without)| (with - without).abs())
+            .fold(0.0, f64::max);
+        Draws {
+            problem: question.problem(),
+            noise: deepest / sigmas,
+            exact,
+        }
+    }
+
     /// One spectrum more.
     pub fn spectrum(&self, chance: &mut Chance) -> Vec<f64> {
         self.exact

@@ -116,6 +116,15 @@ impl Scene {
         scene
     }
 
+    /// The same sightline without any gas.
+    pub fn without_gas(&self) -> Scene {
+        let mut scene = self.clone();
+        for (_, column) in &mut scene.columns_cm2 {
+            *column = 1.0;
+        }
+        scene
+    }
+
     /// Writes truth and question into `folder/name-truth` and `folder/name-question`.
     pub fn write(
         &self,

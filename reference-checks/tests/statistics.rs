@@ -20,6 +20,8 @@ const BIAS: f64 = 0.08;
 const COVERAGE: f64 = 0.02;
 const FALSE_FLAGS: f64 = 0.02;
 const STANDARD_ERRORS: f64 = 3.0;
+/// How far the deepest line stands out of the noise of a channel, in standard deviations.
+const DEEPEST_LINE: f64 = 35.0;
 
 fn line(nm: f64, energy: f64, a_ki_per_s: f64) -> Line {
     Line {
@@ -80,12 +82,16 @@ fn scene(gas_k: f64, background_k: f64, column_cm2: f64) -> Scene {
 }
 
 /// Fits many noisy spectra of a scene and checks the statistics of every quantity.
-fn check(name: &str, scene: &Scene, gas: &Species, signal_to_noise: f64, seed: u64) {
+fn check(name: &str, scene: &Scene, gas: &Species, seed: u64) {
     let folder = Path::new(env!("CARGO_TARGET_TMPDIR")).join("statistics");
     let wavelength_nm = channels(495.5, 504.5, 260);
     let species = std::slice::from_ref(gas);
     let (truth, question) = scene.write(&folder, name, species, &wavelength_nm);
-    let draws = Draws::new(&truth, &question, signal_to_noise);
+    let bare = scene
+        .without_gas()
+        .write(&folder, &format!("{name}-bare"), species, &wavelength_nm)
+        .0;
+    let draws = Draws::of_lines(&truth, &bare, &question, DEEPEST_LINE);
     let names: Vec<String> = draws
         .problem
         .quantities()
@@ -116,6 +122,8 @@ fn check(name: &str, scene: &Scene, gas: &Species, signal_to_noise: f64, seed: u
         })
         .collect();
     let bound = cramer_rao(&derivatives, draws.noise);
+    let signal_to_noise = draws.exact.iter().copied().fold(0.0, f64::max) / draws.noise;
+    println!("{name}: S/N {signal_to_noise:.0} a channel, bounds {bound:.4?}");
 
     let count = if long() { DRAWS_LONG } else { DRAWS };
     let fits = draws.fits(count, seed, &Ask::default());
@@ -188,51 +196,27 @@ fn check(name: &str, scene: &Scene, gas: &Species, signal_to_noise: f64, seed: u
 
 #[test]
 fn absorption_is_measured_as_well_as_the_noise_allows() {
-    check(
-        "absorption",
-        &scene(3000.0, 5200.0, 6e13),
-        &apart(),
-        30.0,
-        11,
-    );
+    check("absorption", &scene(3000.0, 5200.0, 6e13), &apart(), 11);
 }
 
 #[test]
 fn emission_is_measured_as_well_as_the_noise_allows() {
-    check(
-        "emission",
-        &scene(6500.0, 4200.0, 2.5e13),
-        &apart(),
-        30.0,
-        12,
-    );
+    check("emission", &scene(6500.0, 4200.0, 2.5e13), &apart(), 12);
 }
 
 #[test]
 fn thin_lines_are_measured_as_well_as_the_noise_allows() {
-    check("thin", &scene(3000.0, 5200.0, 1.5e12), &apart(), 600.0, 13);
+    check("thin", &scene(3000.0, 5200.0, 1.5e12), &apart(), 13);
 }
 
 #[test]
 fn saturated_lines_are_measured_as_well_as_the_noise_allows() {
-    check(
-        "saturated",
-        &scene(3000.0, 5200.0, 6e14),
-        &apart(),
-        60.0,
-        14,
-    );
+    check("saturated", &scene(3000.0, 5200.0, 6e14), &apart(), 14);
 }
 
 #[test]
 fn blended_lines_are_measured_as_well_as_the_noise_allows() {
-    check(
-        "blended",
-        &scene(3000.0, 5200.0, 6e13),
-        &blended(),
-        60.0,
-        15,
-    );
+    check("blended", &scene(3000.0, 5200.0, 6e13), &blended(), 15);
 }
 
 #[test]

@@ -323,10 +323,7 @@ impl Problem {
     ///
     /// * `values`: in the order and units of [`Problem::quantities`]; they may lie outside the bounds.
     pub fn predict_at(&self, workspace: &mut Workspace, values: &[f64]) -> Vec<f64> {
-        workspace.parameters.copy_from_slice(&self.middle);
-        for (value, &reported) in self.free.iter().zip(values) {
-            workspace.parameters[value.parameter] = value.kind.from_reported(reported);
-        }
+        workspace.parameters = self.parameters_at(values);
         self.engine
             .evaluate(&mut workspace.evaluation, &workspace.parameters);
         let mut spectrum = vec![f64::NAN; self.axis_len];
@@ -334,6 +331,17 @@ impl Problem {
             spectrum[k] = workspace.evaluation.value(channel) / self.to_si;
         }
         spectrum
+    }
+
+    /// The parameters of the forward model at given numbers of the free values, for [`crate::Ask::starts`].
+    ///
+    /// * `values`: in the order and units of [`Problem::quantities`].
+    pub fn parameters_at(&self, values: &[f64]) -> Vec<f64> {
+        let mut parameters = self.middle.clone();
+        for (value, &reported) in self.free.iter().zip(values) {
+            parameters[value.parameter] = value.kind.from_reported(reported);
+        }
+        parameters
     }
 
     /// Bounds of a parameter's coordinate; twice its value in `base` where it is known.

@@ -22,10 +22,12 @@ const SETTLED: f64 = 1e-3;
 const SIGMA_PER_MEDIAN: f64 = 1.482_602_2;
 /// A channel that stands out of its neighbours by this many standard deviations ...
 const SPIKE: f64 = 6.0;
-/// ... and by this part of what it stands out of its surroundings is too sharp for the instrument.
-const SHARP: f64 = 0.7;
-/// Reduced chi-square up to which a clean fit needs no second opinion.
+/// ... while its flanks reach less than this part of it is too sharp for the instrument.
+const FLANK: f64 = 0.3;
+/// Reduced chi-square up to which a clean fit needs no second opinion ...
 const GOOD: f64 = 1.3;
+/// ... where the line-spread function has this standard deviation in channels (a FWHM of 2), so that no line is sharp.
+const RESOLVED: f64 = 0.85;
 /// Scaling by less than this would be division by nothing: data without noise.
 const NO_NOISE: f64 = 1e-12;
 
@@ -42,6 +44,10 @@ impl Problem {
         messages: &mut Vec<String>,
     ) -> (Best, usize) {
         let whole = workspace.target.weight.clone();
+        let middle_m = self.centres_m[self.centres_m.len() / 2];
+        let sightline = self.engine.sightline();
+        let resolved =
+            sightline.line_spread.sigma_m(middle_m) > RESOLVED * sightline.channels.mean_width_m();
         let mut least = f64::INFINITY;
         let mut chosen: Option<(Best, Vec<f64>)> = None;
         for weight in [
@@ -65,7 +71,7 @@ impl Problem {
                 least = loss;
                 chosen = Some((best, kept));
             }
-            if good {
+            if good && resolved {
                 break;
             }
         }
@@ -109,7 +115,8 @@ impl Problem {
     ) -> f64 {
         let degrees = usable.saturating_sub(self.free.len()) as f64;
         let reduced = *chi_square / degrees;
-        if !self.choices.scale_noise || !(reduced > NO_NOISE && reduced.is_finite()) {
+        let noisy = reduced > NO_NOISE && reduced.is_finite();
+        if !(self.choices.scale_noise && noisy) {
             return 1.0;
         }
         for weight in &mut workspace.target.weight {
@@ -199,31 +206,43 @@ fn bisquare_loss(z: f64) -> f64 {
     BISQUARE * BISQUARE / 6.0 * (1.0 - inside.powi(3))
 }
 
-/// The weights without the channels that are sharper than any line through an instrument.
+/// The weights without the channels, one or two side by side, that are sharper than any line through an instrument.
 fn without_spikes(data: &[f64], weight: &[f64]) -> Vec<f64> {
+    const AROUND: usize = 4;
     let used: Vec<usize> = (0..data.len()).filter(|&k| weight[k] > 0.0).collect();
     let mut cleaned = weight.to_vec();
-    for (place, &k) in used.iter().enumerate() {
-        let around: Vec<f64> = (place.saturating_sub(3)..(place + 4).min(used.len()))
-            .filter(|&other| other != place)
-            .map(|other| data[used[other]])
-            .collect();
-        let mut sorted = around.clone();
-        sorted.sort_by(f64::total_cmp);
-        let Some(&middle) = sorted.get(sorted.len() / 2) else {
-            continue;
-        };
-        let height = data[k] - middle;
-        let beside = [place.checked_sub(1), Some(place + 1)];
-        let shoulder = beside
-            .iter()
-            .flatten()
-            .filter_map(|&other| used.get(other))
-            .map(|&other| (data[other] - middle) * height.signum())
-            .fold(f64::NEG_INFINITY, f64::max);
-        let excess = height.abs() - shoulder.max(0.0);
-        if excess * weight[k].sqrt() > SPIKE && excess > SHARP * height.abs() {
-            cleaned[k] = 0.0;
+    for first in 0..used.len() {
+        for length in [1, 2] {
+            let after = first + length;
+            if after > used.len() {
+                continue;
+            }
+            let window = first.saturating_sub(AROUND)..(after + AROUND).min(used.len());
+            let mut around: Vec<f64> = window
+                .filter(|place| !(first..after).contains(place))
+                .map(|place| data[used[place]])
+                .collect();
+            if around.len() < AROUND {
+                continue;
+            }
+            around.sort_by(f64::total_cmp);
+            let middle = around[around.len() / 2];
+            let way = (data[used[first]] - middle).signum();
+            let height = |place: usize| (data[used[place]] - middle) * way;
+            let least = (first..after).map(height).fold(f64::INFINITY, f64::min);
+            let flanks = [
+                first.checked_sub(1),
+                Some(after).filter(|&a| a < used.len()),
+            ];
+            let flank = flanks
+                .iter()
+                .flatten()
+                .map(|&place| height(place))
+                .fold(0.0, f64::max);
+            let stands_out = |place: usize| (height(place) - flank) * weight[used[place]].sqrt();
+            if flank < FLANK * least && (first..after).all(|place| stands_out(place) > SPIKE) {
+                used[first..after].iter().for_each(|&k| cleaned[k] = 0.0);
+            }
         }
     }
     cleaned
@@ -241,13 +260,15 @@ mod tests {
 
     #[test]
     fn a_spike_is_cut_and_a_resolved_line_is_not() {
-        // A Gaussian line with a FWHM of 2.5 channels, 40 standard deviations high, and one spike.
+        // A Gaussian line with a FWHM of 2.5 channels, 40 standard deviations high, and three spikes.
         let mut data: Vec<f64> = (0..60)
             .map(|k| 40.0 * (-2.7726 * ((f64::from(k) - 30.0) / 2.5).powi(2)).exp())
             .collect();
-        data[12] += 50.0;
+        for spike in [12, 44, 45] {
+            data[spike] += 50.0;
+        }
         let cleaned = without_spikes(&data, &[1.0; 60]);
         let cut: Vec<usize> = (0..60).filter(|&k| cleaned[k] == 0.0).collect();
-        assert_eq!(cut, [12]);
+        assert_eq!(cut, [12, 44, 45]);
     }
 }

@@ -75,7 +75,7 @@ fn fits(
     gas: (&Species, &Species),
     signal_to_noise: f64,
 ) -> Vec<Fit> {
-    let folder = Path::new(env!("CARGO_TARGET_TMPDIR")).join("flags");
+    let folder = Path::new(env!("CARGO_TARGET_TMPDIR")).join("degeneracy");
     let truth = truth
         .write(
             &folder,
@@ -275,7 +275,7 @@ fn lines_that_the_setup_does_not_know_make_a_poor_fit() {
 
 #[test]
 fn a_spectrum_with_fewer_channels_than_unknowns_is_too_little() {
-    let folder = Path::new(env!("CARGO_TARGET_TMPDIR")).join("flags");
+    let folder = Path::new(env!("CARGO_TARGET_TMPDIR")).join("degeneracy");
     let scene = scene(2500.0, 3e13);
     let (truth, question) = scene.write(&folder, "little", &[three_lines()], &wavelengths());
     let intensity = truth.predict();
