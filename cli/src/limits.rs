@@ -253,7 +253,7 @@ fn table(document: &Document) -> String {
     }
     let _ = writeln!(
         text,
-        "columns that show at {} sigma in a noise of S/N {:.1} (median), all else known; -: at no column up to 1e24 cm-2",
+        "columns that show at {} sigma in a noise of S/N {:.1} (median), all else known; -: at no column up to 1e20 cm-2",
         document.significance_sigma, document.signal_to_noise
     );
     text

@@ -8,11 +8,15 @@ use backlit_units::doppler::wavelength_factor;
 use backlit_units::{IntensityUnit, SpectralAxis};
 
 /// Columns that are tried, log10 of cm⁻².
-const LOG10_COLUMNS: (f64, f64) = (4.0, 24.0);
+const LOG10_COLUMNS: (f64, f64) = (4.0, 20.0);
 /// Steps of the first look.
 const STEP_DEX: f64 = 1.0;
 /// Width of the last bracket, in dex.
 const EXACT_DEX: f64 = 1e-3;
+/// Gas that at this column (log10 of cm⁻²) shows less than this part of what is wanted has no contrast.
+const HOPELESS_LOG10_COLUMN: f64 = 15.0;
+/// See above: no line grows by so much from there to the last column.
+const HOPELESS: f64 = 1e-6;
 /// Temperatures that are tried where the setup leaves the temperature open.
 const TEMPERATURES: usize = 6;
 
@@ -34,7 +38,7 @@ pub struct Noise<'a> {
 pub struct Limit {
     /// Temperature of the gas, K.
     pub temperature_k: f64,
-    /// The column that reaches the wanted significance, cm⁻²; `None` if none up to 1e24 does.
+    /// The column that reaches the wanted significance, cm⁻²; `None` if none up to 1e20 does.
     pub column_per_cm2: Option<f64>,
     /// Rest wavelength in vacuum, m, of the line that shows it best.
     pub line_vac_m: Option<f64>,
@@ -201,8 +205,14 @@ impl<'a> Search<'a> {
     fn column(&mut self, significance: f64) -> Option<f64> {
         let (mut below, last) = LOG10_COLUMNS;
         let mut above = below;
-        while self.significance(above) < significance {
-            if above >= last {
+        loop {
+            let here = self.significance(above);
+            if here >= significance {
+                break;
+            }
+            // Gas without any contrast: damping wings over all channels would cost much and show nothing.
+            let hopeless = above >= HOPELESS_LOG10_COLUMN && here < HOPELESS * significance;
+            if above >= last || hopeless {
                 return None;
             }
             below = above;
