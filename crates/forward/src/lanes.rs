@@ -3,7 +3,7 @@
 //! Everything here is plain Rust that the compiler turns into vector code when it is inlined into a
 //! function compiled for the wider instructions; [`dispatch`] is the only place that chooses them.
 
-use crate::voigt::{Arithmetic, InstructionSet, Separate};
+use crate::voigt::{Arithmetic, InstructionSet, Separate, Vector};
 
 /// Points of a block: two vectors of AVX2, one of AVX-512.
 pub const LANES: usize = 8;
@@ -54,7 +54,7 @@ pub fn dispatch<K: Kernel>(kernel: K) {
 /// `x = k ln 2 + r`, `exp(x) - 1 = 2^k (exp(r) - 1) + (2^k - 1)`, the inner part by its Taylor series to
 /// r^13. Accuracy: 4e-16 relative to the larger of |result| and 1e-300 (`expm1_matches_the_library`).
 #[inline(always)]
-pub fn expm1<R: Arithmetic>(x: &Block) -> Block {
+pub fn expm1<V: Vector>(v: V, x: &Block) -> Block {
     const INVERSE_LN_2: f64 = std::f64::consts::LOG2_E;
     // ln 2 in two parts: the head has zeros enough at its end that its product with k is exact.
     const LN_2_HEAD: f64 = 6.931_471_803_691_238_2e-1;
@@ -75,19 +75,46 @@ pub fn expm1<R: Arithmetic>(x: &Block) -> Block {
         1.0 / 6.0,
         0.5,
     ];
+    map(
+        v,
+        [x],
+        #[inline(always)]
+        |[x]| {
+            let from_below = v.max(x, v.splat(-708.0));
+            let clamped = v.sub(
+                v.splat(0.0),
+                v.max(v.sub(v.splat(0.0), from_below), v.splat(-709.0)),
+            );
+            let shifted = v.mul_add(clamped, v.splat(INVERSE_LN_2), v.splat(ROUNDER));
+            let k = v.sub(shifted, v.splat(ROUNDER));
+            let r = v.neg_mul_add(
+                k,
+                v.splat(LN_2_TAIL),
+                v.neg_mul_add(k, v.splat(LN_2_HEAD), clamped),
+            );
+            let mut p = v.splat(TAYLOR[0]);
+            for coefficient in &TAYLOR[1..] {
+                p = v.mul_add(p, r, v.splat(*coefficient));
+            }
+            let inner = v.mul_add(v.mul(p, r), r, r);
+            let power = v.scale_by_low_bits(v.splat(1.0), shifted);
+            v.mul_add(power, inner, v.sub(power, v.splat(1.0)))
+        },
+    )
+}
+
+/// A function of vectors on whole blocks.
+///
+/// Loops over lanes become vector code only where the compiler sees it; this says which vectors are meant.
+#[inline(always)]
+pub fn map<V: Vector, const N: usize>(
+    _: V,
+    inputs: [&Block; N],
+    function: impl Fn([V::Value; N]) -> V::Value,
+) -> Block {
     let mut result = [0.0; LANES];
-    for lane in 0..LANES {
-        let clamped = x[lane].clamp(-708.0, 709.0);
-        let shifted = R::mul_add(clamped, INVERSE_LN_2, ROUNDER);
-        let k = shifted - ROUNDER;
-        let r = R::mul_add(-k, LN_2_TAIL, R::mul_add(-k, LN_2_HEAD, clamped));
-        let mut p = TAYLOR[0];
-        for coefficient in &TAYLOR[1..] {
-            p = R::mul_add(p, r, *coefficient);
-        }
-        let inner = R::mul_add(p * r, r, r);
-        let power = f64::from_bits((shifted.to_bits() << 52).wrapping_add(1.0_f64.to_bits()));
-        result[lane] = R::mul_add(power, inner, power - 1.0);
+    for (index, value) in V::vectors_mut(&mut result).iter_mut().enumerate() {
+        *value = function(std::array::from_fn(|k| V::vectors(inputs[k])[index]));
     }
     result
 }
@@ -165,14 +192,16 @@ mod tests {
 
     #[test]
     fn expm1_matches_the_library() {
+        let (Some(fused), Some(separate)) = (Fused::vector(), Separate::vector()) else {
+            return;
+        };
+        let wide = |x: f64| expm1(fused, &[x; LANES]);
+        let plain = |x: f64| expm1(separate, &[x; LANES]);
         for k in 0..400_000 {
             let x = -700.0 + f64::from(k) * 0.0035 + 1e-9 * f64::from(k);
             let x = if k % 2 == 0 { x } else { x * 1e-6 };
             let expected = x.exp_m1();
-            for got in [
-                expm1::<Fused>(&[x; LANES])[3],
-                expm1::<Separate>(&[x; LANES])[5],
-            ] {
+            for got in [wide(x)[3], plain(x)[5]] {
                 assert!(
                     (got - expected).abs() <= 4e-16 * expected.abs().max(1e-300),
                     "{x} {got} {expected}"

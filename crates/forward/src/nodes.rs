@@ -111,8 +111,7 @@ impl Shape {
         }
         if wing_edge > 2.0 {
             // exp(-(w/x)²) has the transform exp(-0.945 (w k)^(2/3)), by its saddle point at |x| = 0.4 w.
-            let spacing =
-                2.0 * std::f64::consts::PI * wing_edge * (digits / 0.945).powf(-1.5);
+            let spacing = 2.0 * std::f64::consts::PI * wing_edge * (digits / 0.945).powf(-1.5);
             bump(0.6 * wing_edge, 1.2 * spacing, 0.8 * wing_edge);
         }
         Feature {
@@ -295,7 +294,11 @@ impl Planner {
                     upper = z;
                 }
                 let next = z - (u - wanted) / slope;
-                z = if next > lower && next < upper { next } else { 0.5 * (lower + upper) };
+                z = if next > lower && next < upper {
+                    next
+                } else {
+                    0.5 * (lower + upper)
+                };
             }
             plan.place.push(z);
             plan.weight.push(1.0 / slope);

@@ -302,10 +302,7 @@ pub(crate) fn interpolate_channels(
     values: &[f64],
     wavelength_vac_m: f64,
 ) -> f64 {
-    let centres: Vec<f64> = channels
-        .bounds_vac_m()
-        .map(|(low, high)| 0.5 * (low + high))
-        .collect();
+    let centres = channels.centres_m();
     let after = centres.partition_point(|&centre| centre <= wavelength_vac_m);
     if after == 0 || after == centres.len() {
         return values[after.saturating_sub(1).min(values.len() - 1)];

@@ -12,6 +12,7 @@ pub struct Channels {
     edges_vac_m: Vec<f64>,
     runs: Vec<Run>,
     mean_width_m: f64,
+    centres_m: Vec<f64>,
 }
 
 /// One stretch of adjacent channels.
@@ -38,6 +39,7 @@ impl Channels {
             edges_vac_m: Vec::new(),
             runs: Vec::new(),
             mean_width_m: 0.0,
+            centres_m: Vec::new(),
         };
         let mut count = 0;
         for (index, _) in used.iter().enumerate().filter(|&(_, used)| *used) {
@@ -58,6 +60,10 @@ impl Channels {
         }
         let total: f64 = channels.bounds_vac_m().map(|(low, high)| high - low).sum();
         channels.mean_width_m = total / count.max(1) as f64;
+        channels.centres_m = channels
+            .bounds_vac_m()
+            .map(|(low, high)| 0.5 * (low + high))
+            .collect();
         channels
     }
 
@@ -86,6 +92,11 @@ impl Channels {
         self.runs
             .iter()
             .flat_map(|run| self.edges_of(run).windows(2).map(|edge| (edge[0], edge[1])))
+    }
+
+    /// Centre of every channel.
+    pub fn centres_m(&self) -> &[f64] {
+        &self.centres_m
     }
 
     /// Mean width of a channel, in m; 0 without channels.

@@ -90,6 +90,8 @@ pub struct Room {
     step: Vec<f64>,
     matrix: Vec<f64>,
     held: Vec<bool>,
+    /// The step of a value that is held: to the wall, or none.
+    fixed: Vec<f64>,
 }
 
 impl Room {
@@ -102,6 +104,9 @@ impl Room {
 /// Predicted change of chi-square below which a place counts as the minimum: a thousandth of a standard
 /// deviation. The step that promises it is still taken.
 pub const STOP_CHI_SQUARE: f64 = 1e-6;
+
+/// The same for a step that is taken unseen: what it leaves is its square.
+const LAST_CHI_SQUARE: f64 = 1e-8;
 
 /// Goes down from `parameters` to the nearest minimum; `parameters` ends there.
 pub fn descend(
@@ -143,6 +148,11 @@ pub fn descend(
         for (i, &parameter) in limits.parameter.iter().enumerate() {
             room.trial[parameter] = parameters[parameter] + room.step[i];
         }
+        if promised < LAST_CHI_SQUARE && damping < 1e-2 {
+            // So near the quadratic model is the model: the last step needs no look at where it led.
+            parameters.copy_from_slice(&room.trial);
+            break StopReason::Converged;
+        }
         engine.evaluate(evaluation, &room.trial);
         evaluation.gram(&target.data, &target.weight, &mut room.there);
         evaluations += 1;
@@ -179,21 +189,57 @@ pub fn descend(
 }
 
 /// Fills `room.step` with the damped step; returns the decrease of chi-square that it promises.
+///
+/// A value that would leave the box goes to the wall, and the others are solved again with it there: cut alone, without
+/// the values that it is tied to, it could promise a rise. Should even that promise nothing, it stays where it is.
 fn propose(room: &mut Room, limits: &Limits, parameters: &[f64], damping: f64) -> f64 {
     let count = limits.parameter.len();
-    let gram = &room.here;
     for i in 0..count {
         let value = parameters[limits.parameter[i]];
-        let down = gram.descent(i);
+        let down = room.here.descent(i);
         room.held[i] = (value <= limits.low[i] && down < 0.0)
             || (value >= limits.high[i] && down > 0.0)
-            || gram.normal(i, i) <= 0.0;
+            || room.here.normal(i, i) <= 0.0;
     }
-    // A step that leaves the box is cut at the wall, and the others are solved again with that one fixed.
+    let mut promised = f64::NAN;
+    for to_wall in [true, false] {
+        room.fixed.clear();
+        room.fixed.resize(count, 0.0);
+        if !solve_in_box(room, limits, parameters, damping, to_wall) {
+            return f64::NAN;
+        }
+        promised = 0.0;
+        for i in 0..count {
+            let mut curved = 0.0;
+            for j in 0..count {
+                curved += room.here.normal(i, j) * room.step[j];
+            }
+            promised += room.step[i] * (2.0 * room.here.descent(i) - curved);
+        }
+        if promised > 0.0 || room.fixed.iter().all(|&step| step == 0.0) {
+            break;
+        }
+    }
+    promised
+}
+
+/// The damped step of the values that are not held; false if the matrix is not definite.
+///
+/// * `to_wall`: values that would leave the box are held at the wall; otherwise they are held where they are.
+fn solve_in_box(
+    room: &mut Room,
+    limits: &Limits,
+    parameters: &[f64],
+    damping: f64,
+    to_wall: bool,
+) -> bool {
+    let count = limits.parameter.len();
+    let gram = &room.here;
     for _ in 0..=count {
         room.matrix.clear();
         room.matrix.resize(count * count, 0.0);
         for i in 0..count {
+            let mut right = gram.descent(i);
             for j in 0..count {
                 room.matrix[i * count + j] = match (room.held[i] || room.held[j], i == j) {
                     (true, true) => 1.0,
@@ -201,25 +247,30 @@ fn propose(room: &mut Room, limits: &Limits, parameters: &[f64], damping: f64) -
                     (false, true) => gram.normal(i, i) * (1.0 + damping),
                     (false, false) => gram.normal(i, j),
                 };
+                right -= gram.normal(i, j) * room.fixed[j];
             }
-            room.step[i] = if room.held[i] { 0.0 } else { gram.descent(i) };
+            room.step[i] = if room.held[i] { room.fixed[i] } else { right };
         }
         if !cholesky_solve(&mut room.matrix, &mut room.step) {
-            return f64::NAN;
+            return false;
         }
         let shrink = (0..count)
+            .filter(|&i| !room.held[i])
             .map(|i| (limits.stride[i] / room.step[i].abs()).min(1.0))
             .fold(1.0, f64::min);
         let mut hit = false;
         for i in 0..count {
+            if room.held[i] {
+                continue;
+            }
             room.step[i] *= shrink;
             let value = parameters[limits.parameter[i]];
             let moved = value + room.step[i];
             if moved < limits.low[i] || moved > limits.high[i] {
-                room.step[i] = moved.clamp(limits.low[i], limits.high[i]) - value;
-                if room.step[i] == 0.0 && !room.held[i] {
-                    room.held[i] = true;
-                    hit = true;
+                room.held[i] = true;
+                hit = true;
+                if to_wall {
+                    room.fixed[i] = moved.clamp(limits.low[i], limits.high[i]) - value;
                 }
             }
         }
@@ -227,15 +278,7 @@ fn propose(room: &mut Room, limits: &Limits, parameters: &[f64], damping: f64) -
             break;
         }
     }
-    let mut promised = 0.0;
-    for i in 0..count {
-        let mut curved = 0.0;
-        for j in 0..count {
-            curved += gram.normal(i, j) * room.step[j];
-        }
-        promised += room.step[i] * (2.0 * gram.descent(i) - curved);
-    }
-    promised
+    true
 }
 
 /// Solves a small symmetric definite system in place, scaled to a unit diagonal; false if it is not definite.

@@ -34,7 +34,8 @@ impl Kernel for Absorb<'_> {
         for block in first..last {
             let mut x = [0.0; LANES];
             for lane in 0..LANES {
-                x[lane] = (line.centre_m - wavelengths[block][lane]) * (inverses[block][lane] * per_width);
+                x[lane] = (line.centre_m - wavelengths[block][lane])
+                    * (inverses[block][lane] * per_width);
             }
             let (mut k, mut l) = ([0.0; LANES], [0.0; LANES]);
             w_lanes::<_, R, LANES>(&x, &line.damping, &mut k, &mut l);

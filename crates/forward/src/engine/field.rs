@@ -73,7 +73,9 @@ impl Field {
                 std::array::from_fn(|lane| zero + unit * place.get(lane).unwrap_or(&last));
             self.wavelength_m.push(wavelength);
             self.per_wavelength.push(wavelength.map(f64::recip));
-            self.weight_m.push(std::array::from_fn(|lane| unit * weight.get(lane).unwrap_or(&0.0)));
+            self.weight_m.push(std::array::from_fn(|lane| {
+                unit * weight.get(lane).unwrap_or(&0.0)
+            }));
         }
         true
     }

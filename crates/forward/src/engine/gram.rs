@@ -72,8 +72,13 @@ impl Kernel for Accumulate<'_> {
         if self.stride == LANES {
             // All products fit in registers.
             let mut sums = [[0.0; LANES]; LANES];
-            for ((row, &data), &weight) in
-                self.rows.as_chunks::<LANES>().0.iter().zip(self.data).zip(self.weight)
+            for ((row, &data), &weight) in self
+                .rows
+                .as_chunks::<LANES>()
+                .0
+                .iter()
+                .zip(self.data)
+                .zip(self.weight)
             {
                 let mut row = *row;
                 row[0] = data - row[0];
@@ -87,8 +92,11 @@ impl Kernel for Accumulate<'_> {
             return;
         }
         let mut row = vec![0.0; self.stride];
-        for ((stored, &data), &weight) in
-            self.rows.chunks_exact(self.stride).zip(self.data).zip(self.weight)
+        for ((stored, &data), &weight) in self
+            .rows
+            .chunks_exact(self.stride)
+            .zip(self.data)
+            .zip(self.weight)
         {
             row.copy_from_slice(stored);
             row[0] = data - row[0];

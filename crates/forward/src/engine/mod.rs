@@ -59,6 +59,7 @@ pub struct Evaluation {
     key: Vec<Shape>,
     field: field::Field,
     room: Vec<crate::lanes::Block>,
+    nodes_used: usize,
     states: Vec<lines::CloudState>,
 }
 
@@ -149,6 +150,7 @@ impl Engine {
             key: Vec::new(),
             field: field::Field::default(),
             room: Vec::new(),
+            nodes_used: 0,
             states: Vec::new(),
         }
     }
@@ -161,7 +163,6 @@ impl Engine {
     /// (`the_engine_agrees_with_the_oracle`); derivatives against finite differences
     /// (`derivatives_agree_with_finite_differences`).
     pub fn evaluate(&self, evaluation: &mut Evaluation, parameters: &[f64]) {
-        evaluation.rows.fill(0.0);
         lines::update(
             self,
             parameters,
@@ -180,9 +181,12 @@ impl Engine {
             field,
             states,
             room,
+            nodes_used,
             ..
         } = evaluation;
+        *nodes_used = 0;
         let stride = *stride;
+        self.lay_background(parameters, continuum, column_of, stride, rows);
         groups.form(lines);
         for group in groups.iter() {
             let placed = groups::plan(group, &self.sightline, planner, key, lines);
@@ -190,6 +194,7 @@ impl Engine {
                 if !field.lay(&placed, run, self.sightline.line_spread) {
                     continue;
                 }
+                *nodes_used += field.nodes;
                 field.clear(states);
                 for &index in group.members {
                     dispatch(absorb::Absorb {
@@ -209,7 +214,6 @@ impl Engine {
                 });
             }
         }
-        self.lay_background(parameters, continuum, column_of, stride, rows);
     }
 
     fn lay_background(
@@ -221,41 +225,55 @@ impl Engine {
         rows: &mut [f64],
     ) {
         let channels = self.sightline.channels.len();
-        let mut add = |column: usize, values: &[f64]| {
-            for (row, value) in rows.chunks_exact_mut(stride).zip(values) {
-                row[column] += value;
-            }
+        let mut laid: [(usize, &[f64]); 4] = [(0, &[]); 4];
+        let mut count = 0;
+        let mut lay = |column: usize, values| {
+            laid[count] = (column, values);
+            count += 1;
         };
         match (&self.sightline.background, &self.continuum) {
             (Background::Blackbody { .. }, Some(continuum)) => {
                 continuum.evaluate(parameters, channels, columns);
-                add(0, &columns.value);
-                if column_of[Layout::SCALE] > 0 {
-                    add(column_of[Layout::SCALE], &columns.value);
-                }
+                lay(0, &columns.value);
                 for (parameter, values) in [
+                    (Layout::SCALE, &columns.value),
                     (Layout::BACKGROUND_TEMPERATURE, &columns.temperature),
                     (Layout::DILUTION, &columns.dilution),
                 ] {
                     if column_of[parameter] > 0 {
-                        add(column_of[parameter], values);
-                    }
-                }
-                for (k, values) in columns.shape.iter().enumerate() {
-                    if column_of[Layout::SHAPE + k] > 0 {
-                        add(column_of[Layout::SHAPE + k], values);
+                        lay(column_of[parameter], values);
                     }
                 }
             }
-            (Background::Measured { radiance }, _) => {
-                add(0, radiance);
-            }
+            (Background::Measured { radiance }, _) => lay(0, radiance),
             _ => {}
+        }
+        // One pass over the rows: whatever no background reaches starts from zero.
+        for (channel, row) in rows.chunks_exact_mut(stride).enumerate() {
+            row.fill(0.0);
+            if channel < channels {
+                for &(column, values) in &laid[..count] {
+                    row[column] = values[channel];
+                }
+            }
+        }
+        for (k, values) in columns.shape.iter().enumerate() {
+            let column = column_of[Layout::SHAPE + k];
+            if column > 0 {
+                for (row, value) in rows.chunks_exact_mut(stride).zip(values) {
+                    row[column] = *value;
+                }
+            }
         }
     }
 }
 
 impl Evaluation {
+    /// Nodes at which the last evaluation worked out the gas.
+    pub fn nodes_used(&self) -> usize {
+        self.nodes_used
+    }
+
     /// The free parameters, in the order of the derivatives.
     pub fn free(&self) -> &[usize] {
         &self.free

@@ -55,15 +55,19 @@ impl Shares {
             return None;
         }
         if highest / lowest - 1.0 < 1e-9 {
-            return Some(Shares { ln_first: lowest.ln(), tables: vec![Table::new(lowest, true)] });
+            return Some(Shares {
+                ln_first: lowest.ln(),
+                tables: vec![Table::new(lowest, true)],
+            });
         }
         let count = ((highest / lowest).ln() / (2.0 * HALF_STRETCH)).ceil() as usize + 1;
         if count > MOST_TABLES {
             return None;
         }
         let ln_first = lowest.ln();
-        let tables =
-            (0..count).map(|k| Table::new((ln_first + 2.0 * HALF_STRETCH * k as f64).exp(), false)).collect();
+        let tables = (0..count)
+            .map(|k| Table::new((ln_first + 2.0 * HALF_STRETCH * k as f64).exp(), false))
+            .collect();
         Some(Shares { ln_first, tables })
     }
 
@@ -101,7 +105,8 @@ impl Shares {
                 for term in (0..PHASE_TERMS).rev() {
                     let mut value = term_of(term, 0)[index];
                     if !table.fixed {
-                        let slope = vector.mul_add(term_of(term, 2)[index], part, term_of(term, 1)[index]);
+                        let slope =
+                            vector.mul_add(term_of(term, 2)[index], part, term_of(term, 1)[index]);
                         value = vector.mul_add(slope, part, value);
                     }
                     sum = vector.mul_add(sum, x, value);
@@ -109,7 +114,10 @@ impl Shares {
                 *share = sum;
             }
         }
-        NodeShares { below: table.below, shares: room[..blocks].as_flattened() }
+        NodeShares {
+            below: table.below,
+            shares: room[..blocks].as_flattened(),
+        }
     }
 }
 
@@ -140,12 +148,18 @@ impl Table {
             for term in 0..PHASE_TERMS {
                 for ratio_term in 0..ratio_terms {
                     for block in terms.chunks_exact(LANES) {
-                        coefficients.push(std::array::from_fn(|lane| block[lane][term][ratio_term]));
+                        coefficients
+                            .push(std::array::from_fn(|lane| block[lane][term][ratio_term]));
                     }
                 }
             }
         }
-        Table { fixed, below, blocks, coefficients }
+        Table {
+            fixed,
+            below,
+            blocks,
+            coefficients,
+        }
     }
 }
 
@@ -195,9 +209,13 @@ mod tests {
     #[test]
     fn tabulated_shares_match_the_error_function() {
         let mut room = Vec::new();
-        let Some(vector) = Separate::vector() else { unreachable!("runs anywhere") };
+        let Some(vector) = Separate::vector() else {
+            unreachable!("runs anywhere")
+        };
         for (lowest, highest) in [(0.4, 0.4), (0.9, 0.95), (2.0, 2.1), (0.1, 0.1)] {
-            let Some(shares) = Shares::new(lowest, highest) else { unreachable!("within the range") };
+            let Some(shares) = Shares::new(lowest, highest) else {
+                unreachable!("within the range")
+            };
             for k in 0..2000 {
                 let phase = f64::from(k) / 2000.0;
                 let ratio = lowest + (highest - lowest) * (f64::from(k) * 0.618).fract();

@@ -1,9 +1,9 @@
 //! From nodes to channels: each node's light through the line-spread function.
 
 use super::field::Field;
+use super::shares::{REACH_IN_SIGMAS, Shares};
 use crate::lanes::{Block, Kernel, LANES, NormalIntegral};
 use crate::sightline::{Channels, LineSpread, Run};
-use super::shares::{REACH_IN_SIGMAS, Shares};
 use crate::voigt::{Arithmetic, Vector};
 
 /// A run of channels, its edges and widths filled up to whole blocks so that no block ends early.
@@ -25,12 +25,19 @@ const EVEN: f64 = 1e-7;
 impl RunOfChannels {
     /// All runs of the channels in use.
     pub fn all(channels: &Channels, line_spread: LineSpread) -> Vec<Self> {
-        channels.runs().iter().map(|run| Self::new(channels, run, line_spread)).collect()
+        channels
+            .runs()
+            .iter()
+            .map(|run| Self::new(channels, run, line_spread))
+            .collect()
     }
 
     fn new(channels: &Channels, run: &Run, line_spread: LineSpread) -> Self {
         let mut edges_m = channels.edges_of(run).to_vec();
-        let mut per_width: Vec<f64> = edges_m.windows(2).map(|edge| 1.0 / (edge[1] - edge[0])).collect();
+        let mut per_width: Vec<f64> = edges_m
+            .windows(2)
+            .map(|edge| 1.0 / (edge[1] - edge[0]))
+            .collect();
         let count = per_width.len();
         let mut even = vec![false; count];
         let mut ratios = (f64::INFINITY, 0.0_f64);
@@ -41,14 +48,20 @@ impl RunOfChannels {
                 let reach = (REACH_IN_SIGMAS * sigma / width).ceil() as usize + 1;
                 let around = channel.saturating_sub(reach)..(channel + reach + 1).min(count);
                 even[channel] = around.end - around.start < 200
-                    && edges_m[around.start..=around.end].iter().zip(around.start..).all(|(edge, k)| {
-                        let expected = edges_m[channel] + (k as f64 - channel as f64) * width;
-                        (edge - expected).abs() < EVEN * width
-                    });
+                    && edges_m[around.start..=around.end]
+                        .iter()
+                        .zip(around.start..)
+                        .all(|(edge, k)| {
+                            let expected = edges_m[channel] + (k as f64 - channel as f64) * width;
+                            (edge - expected).abs() < EVEN * width
+                        });
                 if even[channel] {
                     // A ratio anywhere in the channel: σ may change across it.
                     let other = line_spread.sigma_m(edges_m[channel + 1]);
-                    ratios = (ratios.0.min(width / sigma.max(other)), ratios.1.max(width / sigma.min(other)));
+                    ratios = (
+                        ratios.0.min(width / sigma.max(other)),
+                        ratios.1.max(width / sigma.min(other)),
+                    );
                 }
             }
         }
@@ -56,7 +69,14 @@ impl RunOfChannels {
         let last = edges_m[count];
         edges_m.resize(edges_m.len() + 2 * LANES, last);
         per_width.resize(count + 2 * LANES, 0.0);
-        RunOfChannels { first_channel: run.channels.start, channels: count, edges_m, per_width, even, shares }
+        RunOfChannels {
+            first_channel: run.channels.start,
+            channels: count,
+            edges_m,
+            per_width,
+            even,
+            shares,
+        }
     }
 
     /// The lowest edge.
@@ -84,7 +104,15 @@ pub struct Spread<'a> {
 impl Kernel for Spread<'_> {
     #[inline(always)]
     fn run<R: Arithmetic>(self) {
-        let Spread { field, run, stride, normal, line_spread, rows, room } = self;
+        let Spread {
+            field,
+            run,
+            stride,
+            normal,
+            line_spread,
+            rows,
+            room,
+        } = self;
         let Some(vector) = R::vector() else { return };
         let edges = &run.edges_m;
         let wavelengths = &field.wavelength_m.as_flattened()[..field.nodes];
@@ -96,17 +124,26 @@ impl Kernel for Spread<'_> {
             while own + 1 < run.channels && edges[own + 1] <= wavelength {
                 own += 1;
             }
-            if let (Some(shares), true, true) =
-                (&run.shares, run.even[own], edges[own] <= wavelength && wavelength < edges[own + 1])
-            {
+            if let (Some(shares), true, true) = (
+                &run.shares,
+                run.even[own],
+                edges[own] <= wavelength && wavelength < edges[own + 1],
+            ) {
                 let per_width = run.per_width[own];
                 let phase = (wavelength - edges[own]) * per_width;
                 let found = shares.at(vector, phase, 1.0 / (per_width * sigma), room);
                 let from = own.saturating_sub(found.below);
                 let skipped = from + found.below - own;
                 let to = (from + found.shares.len() - skipped).min(run.channels);
-                let channels = (run.first_channel + from) * stride..(run.first_channel + to) * stride;
-                add(vector, &mut rows[channels], &found.shares[skipped..], per_width, light);
+                let channels =
+                    (run.first_channel + from) * stride..(run.first_channel + to) * stride;
+                add(
+                    vector,
+                    &mut rows[channels],
+                    &found.shares[skipped..],
+                    per_width,
+                    light,
+                );
                 continue;
             }
             while first + 1 < run.channels && edges[first + 1] <= wavelength - reach {
@@ -115,7 +152,13 @@ impl Kernel for Spread<'_> {
             if sigma == 0.0 {
                 if edges[first] <= wavelength && wavelength < edges[first + 1] {
                     let channel = (run.first_channel + first) * stride;
-                    add(vector, &mut rows[channel..channel + stride], &[run.per_width[first]], 1.0, light);
+                    add(
+                        vector,
+                        &mut rows[channel..channel + stride],
+                        &[run.per_width[first]],
+                        1.0,
+                        light,
+                    );
                 }
                 continue;
             }
@@ -128,11 +171,20 @@ impl Kernel for Spread<'_> {
                     *t = (edge - wavelength) * per_sigma;
                 }
                 let mut shares = normal.at::<R>(&t);
-                for (share, per_width) in shares.iter_mut().zip(&run.per_width[channel..channel + LANES]) {
+                for (share, per_width) in shares
+                    .iter_mut()
+                    .zip(&run.per_width[channel..channel + LANES])
+                {
                     (*share, below) = ((*share - below) * per_width, *share);
                 }
                 let start = (run.first_channel + channel) * stride;
-                add(vector, &mut rows[start..start + LANES * stride], &shares, 1.0, light);
+                add(
+                    vector,
+                    &mut rows[start..start + LANES * stride],
+                    &shares,
+                    1.0,
+                    light,
+                );
                 channel += LANES;
             }
         }

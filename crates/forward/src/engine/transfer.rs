@@ -3,11 +3,11 @@
 use super::Engine;
 use super::field::Field;
 use super::lines::CloudState;
-use crate::lanes::{Block, Kernel, LANES, dispatch, expm1};
+use crate::lanes::{Block, Kernel, LANES, dispatch, expm1, map};
 use crate::oracle::{interpolate_channels, legendre};
 use crate::planck::{FIRST_RADIATION_W_M2_PER_SR, SECOND_RADIATION_M_K};
 use crate::sightline::{Background, Layout};
-use crate::voigt::Arithmetic;
+use crate::voigt::{Arithmetic, Vector};
 
 /// Fills the rows of the field: excess radiance over the background and its derivatives, times the weights.
 ///
@@ -54,20 +54,61 @@ pub const MOST_CLOUDS: usize = 8;
 
 /// Radiance of a blackbody and its derivative by ln T, on a block.
 #[inline(always)]
-fn planck<R: Arithmetic>(first: &Block, second: &Block, temperature_k: f64) -> (Block, Block) {
-    let per_temperature = 1.0 / temperature_k;
-    let mut x = [0.0; LANES];
-    for lane in 0..LANES {
-        x[lane] = second[lane] * per_temperature;
-    }
-    let growth = expm1::<R>(&x);
-    let (mut value, mut slope) = ([0.0; LANES], [0.0; LANES]);
-    for lane in 0..LANES {
-        let inverse = 1.0 / growth[lane];
-        value[lane] = first[lane] * inverse;
-        slope[lane] = value[lane] * x[lane] * R::mul_add(1.0, inverse, 1.0);
-    }
+fn planck<V: Vector>(v: V, first: &Block, second: &Block, temperature_k: f64) -> (Block, Block) {
+    let per_temperature = v.splat(1.0 / temperature_k);
+    let x = map(
+        v,
+        [second],
+        #[inline(always)]
+        |[second]| v.mul(second, per_temperature),
+    );
+    let growth = expm1(v, &x);
+    let inverse = map(
+        v,
+        [&growth],
+        #[inline(always)]
+        |[growth]| v.div(v.splat(1.0), growth),
+    );
+    let value = map(
+        v,
+        [first, &inverse],
+        #[inline(always)]
+        |[first, inverse]| v.mul(first, inverse),
+    );
+    let slope = map(
+        v,
+        [&value, &x, &inverse],
+        #[inline(always)]
+        |[value, x, inverse]| v.mul(v.mul(value, x), v.add(inverse, v.splat(1.0))),
+    );
     (value, slope)
+}
+
+/// Writes one column of the rows of a block, times the weights of the nodes.
+#[inline(always)]
+fn scatter<V: Vector>(
+    v: V,
+    rows: &mut [f64],
+    stride: usize,
+    weight: &Block,
+    column: usize,
+    values: &Block,
+) {
+    let weighted = product(v, values, weight);
+    for (row, value) in rows.chunks_exact_mut(stride).zip(weighted) {
+        row[column] = value;
+    }
+}
+
+/// Lane by lane.
+#[inline(always)]
+fn product<V: Vector>(v: V, a: &Block, b: &Block) -> Block {
+    map(
+        v,
+        [a, b],
+        #[inline(always)]
+        |[a, b]| v.mul(a, b),
+    )
 }
 
 impl Kernel for Pass<'_> {
@@ -81,6 +122,7 @@ impl Kernel for Pass<'_> {
             stride,
             field,
         } = self;
+        let Some(v) = R::vector() else { return };
         let sightline = &engine.sightline;
         let scale = parameters[Layout::SCALE].exp();
         let background_k = parameters[Layout::BACKGROUND_TEMPERATURE].exp();
@@ -88,6 +130,7 @@ impl Kernel for Pass<'_> {
         let terms = sightline.background.shape_terms();
         let shape = &parameters[Layout::SHAPE..Layout::SHAPE + terms];
         let span = sightline.channels.span_vac_m().unwrap_or((0.0, 1.0));
+        let place_of = |wavelength: f64| (2.0 * wavelength - span.0 - span.1) / (span.1 - span.0);
         let clouds = states.len().min(MOST_CLOUDS);
         let Field {
             wavelength_m,
@@ -101,12 +144,27 @@ impl Kernel for Pass<'_> {
             let wavelength = wavelength_m[block];
             let inverse = per_wavelength[block];
             let weight = weight_m[block];
-            let (mut first, mut second) = ([0.0; LANES], [0.0; LANES]);
-            for lane in 0..LANES {
-                let square = inverse[lane] * inverse[lane];
-                first[lane] = scale * FIRST_RADIATION_W_M2_PER_SR * square * square * inverse[lane];
-                second[lane] = SECOND_RADIATION_M_K * inverse[lane];
-            }
+            let square = map(
+                v,
+                [&inverse],
+                #[inline(always)]
+                |[inverse]| v.mul(inverse, inverse),
+            );
+            let first = map(
+                v,
+                [&square, &inverse],
+                #[inline(always)]
+                |[square, inverse]| {
+                    let constant = v.splat(scale * FIRST_RADIATION_W_M2_PER_SR);
+                    v.mul(v.mul(constant, v.mul(square, square)), inverse)
+                },
+            );
+            let second = map(
+                v,
+                [&inverse],
+                #[inline(always)]
+                |[inverse]| v.mul(v.splat(SECOND_RADIATION_M_K), inverse),
+            );
             let mut behind = [0.0; LANES];
             let mut behind_slope = [0.0; LANES];
             let mut bare = [0.0; LANES];
@@ -119,19 +177,26 @@ impl Kernel for Pass<'_> {
                     }
                 }
                 Background::Blackbody { .. } => {
-                    (bare, behind_slope) = planck::<R>(&first, &second, background_k);
-                    for lane in 0..LANES {
-                        let mut bend = dilution;
-                        if terms > 0 {
-                            let place =
-                                (2.0 * wavelength[lane] - span.0 - span.1) / (span.1 - span.0);
-                            for (k, a) in shape.iter().enumerate() {
-                                bend += dilution * a * legendre(k + 1, place);
-                            }
+                    (bare, behind_slope) = planck(v, &first, &second, background_k);
+                    let mut bend = [dilution; LANES];
+                    for (k, a) in shape.iter().enumerate() {
+                        for lane in 0..LANES {
+                            bend[lane] +=
+                                dilution * a * legendre(k + 1, place_of(wavelength[lane]));
                         }
-                        behind[lane] = bend * bare[lane];
-                        behind_slope[lane] *= bend;
                     }
+                    behind = map(
+                        v,
+                        [&bend, &bare],
+                        #[inline(always)]
+                        |[bend, bare]| v.mul(bend, bare),
+                    );
+                    behind_slope = map(
+                        v,
+                        [&bend, &behind_slope],
+                        #[inline(always)]
+                        |[bend, slope]| v.mul(bend, slope),
+                    );
                 }
             }
             let mut excess = [0.0; LANES];
@@ -143,25 +208,42 @@ impl Kernel for Pass<'_> {
                     continue;
                 }
                 let (source, source_slope) =
-                    planck::<R>(&first, &second, states[cloud].temperature_k);
-                let negative = depths[cloud].depth[block].map(|depth| -depth);
-                let change = expm1::<R>(&negative);
-                for lane in 0..LANES {
-                    let contrast = source[lane] - behind[lane];
-                    let pull = contrast - excess[lane];
-                    by_depth[cloud][lane] = pull * (1.0 + change[lane]);
-                    by_source[cloud][lane] = -change[lane] * source_slope[lane];
-                    lost[cloud][lane] = change[lane];
-                    excess[lane] = R::mul_add(-change[lane], pull, excess[lane]);
-                }
+                    planck(v, &first, &second, states[cloud].temperature_k);
+                let negative = map(
+                    v,
+                    [&depths[cloud].depth[block]],
+                    #[inline(always)]
+                    |[depth]| v.sub(v.splat(0.0), depth),
+                );
+                let change = expm1(v, &negative);
+                let pull = map(
+                    v,
+                    [&source, &behind, &excess],
+                    #[inline(always)]
+                    |[source, behind, excess]| v.sub(v.sub(source, behind), excess),
+                );
+                by_depth[cloud] = map(
+                    v,
+                    [&pull, &change],
+                    #[inline(always)]
+                    |[pull, change]| v.mul_add(pull, change, pull),
+                );
+                by_source[cloud] = map(
+                    v,
+                    [&change, &source_slope],
+                    #[inline(always)]
+                    |[change, slope]| v.neg_mul_add(change, slope, v.splat(0.0)),
+                );
+                excess = map(
+                    v,
+                    [&change, &pull, &excess],
+                    #[inline(always)]
+                    |[change, pull, excess]| v.neg_mul_add(change, pull, excess),
+                );
+                lost[cloud] = change;
             }
             let rows = &mut rows[block * LANES * stride..(block + 1) * LANES * stride];
-            let mut write = |column: usize, values: &Block| {
-                for lane in 0..LANES {
-                    rows[lane * stride + column] = values[lane] * weight[lane];
-                }
-            };
-            write(0, &excess);
+            scatter(v, rows, stride, &weight, 0, &excess);
             // From the observer backwards: what the clouds in front let through.
             let mut through = [1.0; LANES];
             for cloud in (0..clouds).rev() {
@@ -174,19 +256,19 @@ impl Kernel for Pass<'_> {
                     by_depth[cloud][lane] *= through[lane];
                     by_source[cloud][lane] *= through[lane];
                 }
-                let chain = |slopes: &Block| {
-                    let mut values = [0.0; LANES];
-                    for lane in 0..LANES {
-                        values[lane] = slopes[lane] * by_depth[cloud][lane];
-                    }
-                    values
-                };
                 if column_of[place.temperature()] > 0 {
-                    let mut values = chain(&depth.by_temperature[block]);
+                    let mut values = product(v, &by_depth[cloud], &depth.by_temperature[block]);
                     for lane in 0..LANES {
                         values[lane] += by_source[cloud][lane];
                     }
-                    write(column_of[place.temperature()], &values);
+                    scatter(
+                        v,
+                        rows,
+                        stride,
+                        &weight,
+                        column_of[place.temperature()],
+                        &values,
+                    );
                 }
                 for (parameter, slopes) in [
                     (place.velocity(), &depth.by_velocity),
@@ -194,14 +276,25 @@ impl Kernel for Pass<'_> {
                     (place.doppler_temperature(), &depth.by_doppler_temperature),
                 ] {
                     if column_of[parameter] > 0 {
-                        write(column_of[parameter], &chain(&slopes[block]));
+                        scatter(
+                            v,
+                            rows,
+                            stride,
+                            &weight,
+                            column_of[parameter],
+                            &product(v, &by_depth[cloud], &slopes[block]),
+                        );
                     }
                 }
                 for (s, species) in depth.by_column.iter().enumerate() {
                     if species.touched && column_of[place.column(s)] > 0 {
-                        write(
+                        scatter(
+                            v,
+                            rows,
+                            stride,
+                            &weight,
                             column_of[place.column(s)],
-                            &chain(&species.depth[block]),
+                            &product(v, &by_depth[cloud], &species.depth[block]),
                         );
                     }
                 }
@@ -212,13 +305,6 @@ impl Kernel for Pass<'_> {
             for lane in 0..LANES {
                 through[lane] -= 1.0;
             }
-            let of_background = |slopes: &Block| {
-                let mut values = [0.0; LANES];
-                for lane in 0..LANES {
-                    values[lane] = slopes[lane] * through[lane];
-                }
-                values
-            };
             if column_of[Layout::SCALE] > 0 {
                 // A measured background is what it is: only the gas's own light scales.
                 let mut values = excess;
@@ -227,32 +313,50 @@ impl Kernel for Pass<'_> {
                         values[lane] -= behind[lane] * through[lane];
                     }
                 }
-                write(column_of[Layout::SCALE], &values);
+                scatter(v, rows, stride, &weight, column_of[Layout::SCALE], &values);
             }
             if column_of[Layout::BACKGROUND_TEMPERATURE] > 0 {
-                write(
+                scatter(
+                    v,
+                    rows,
+                    stride,
+                    &weight,
                     column_of[Layout::BACKGROUND_TEMPERATURE],
-                    &of_background(&behind_slope),
+                    &product(v, &through, &behind_slope),
                 );
             }
             if column_of[Layout::DILUTION] > 0 {
                 let mut slopes = bare;
                 for (k, a) in shape.iter().enumerate() {
                     for lane in 0..LANES {
-                        let place = (2.0 * wavelength[lane] - span.0 - span.1) / (span.1 - span.0);
+                        let place = place_of(wavelength[lane]);
                         slopes[lane] += bare[lane] * a * legendre(k + 1, place);
                     }
                 }
-                write(column_of[Layout::DILUTION], &of_background(&slopes));
+                scatter(
+                    v,
+                    rows,
+                    stride,
+                    &weight,
+                    column_of[Layout::DILUTION],
+                    &product(v, &through, &slopes),
+                );
             }
             for k in 0..terms {
                 if column_of[Layout::SHAPE + k] > 0 {
                     let mut slopes = [0.0; LANES];
                     for lane in 0..LANES {
-                        let place = (2.0 * wavelength[lane] - span.0 - span.1) / (span.1 - span.0);
+                        let place = place_of(wavelength[lane]);
                         slopes[lane] = dilution * bare[lane] * legendre(k + 1, place);
                     }
-                    write(column_of[Layout::SHAPE + k], &of_background(&slopes));
+                    scatter(
+                        v,
+                        rows,
+                        stride,
+                        &weight,
+                        column_of[Layout::SHAPE + k],
+                        &product(v, &through, &slopes),
+                    );
                 }
             }
         }

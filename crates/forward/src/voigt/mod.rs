@@ -30,5 +30,5 @@ pub use arithmetic::{Arithmetic, Separate};
 #[cfg(target_arch = "x86_64")]
 pub use arithmetic::{Fused, FusedWide};
 pub use dispatch::{InstructionSet, Precision, w_slice, w_slice_with};
-pub(crate) use vector::Vector;
 pub use lanes::{Damping, slope_lanes, w_lanes};
+pub(crate) use vector::Vector;
