@@ -56,7 +56,8 @@ impl Continuum {
     ) -> Self {
         let bounds: Vec<(f64, f64)> = channels.bounds_vac_m().collect();
         let span = channels.span_vac_m().unwrap_or((1.0, 2.0));
-        let mut open = vec![0..bounds.len()];
+        let mut open: Vec<Range<usize>> = Vec::new();
+        open.push(0..bounds.len());
         let mut panels = Vec::new();
         while let Some(range) = open.pop() {
             if range.is_empty() {
@@ -172,12 +173,12 @@ impl Kernel for Spread<'_> {
         for (column, weights) in columns.iter_mut().zip(self.weights) {
             *column = &weights[..count];
         }
-        for channel in 0..count {
+        for (channel, value) in self.channels.iter_mut().enumerate() {
             let mut sum = 0.0;
-            for node in 0..NODES {
-                sum = R::mul_add(columns[node][channel], self.nodes[node], sum);
+            for (column, node) in columns.iter().zip(self.nodes) {
+                sum = R::mul_add(column[channel], *node, sum);
             }
-            self.channels[channel] = sum;
+            *value = sum;
         }
     }
 }

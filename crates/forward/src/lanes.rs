@@ -57,7 +57,7 @@ pub fn dispatch<K: Kernel>(kernel: K) {
 pub fn expm1<V: Vector>(v: V, x: &Block) -> Block {
     const INVERSE_LN_2: f64 = std::f64::consts::LOG2_E;
     // ln 2 in two parts: the head has zeros enough at its end that its product with k is exact.
-    const LN_2_HEAD: f64 = 6.931_471_803_691_238_2e-1;
+    const LN_2_HEAD: f64 = 0.693_147_180_369_123_8;
     const LN_2_TAIL: f64 = 1.908_214_929_270_587_7e-10;
     // Adding and subtracting it rounds to the nearest whole number.
     const ROUNDER: f64 = 6_755_399_441_055_744.0;

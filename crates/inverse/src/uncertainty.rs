@@ -58,8 +58,8 @@ impl Covariance {
                 }
             }
         }
-        for i in 0..count {
-            if size[i] <= 0.0 {
+        for (i, &size) in size.iter().enumerate() {
+            if size <= 0.0 {
                 matrix.row_mut(i).fill(f64::NAN);
                 matrix.column_mut(i).fill(f64::NAN);
             }

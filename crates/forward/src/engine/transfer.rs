@@ -302,9 +302,7 @@ impl Kernel for Pass<'_> {
                     through[lane] *= 1.0 + lost[cloud][lane];
                 }
             }
-            for lane in 0..LANES {
-                through[lane] -= 1.0;
-            }
+            let through = through.map(|through| through - 1.0);
             if column_of[Layout::SCALE] > 0 {
                 // A measured background is what it is: only the gas's own light scales.
                 let mut values = excess;
