@@ -26,7 +26,7 @@ const TAKES_PART: f64 = 5.0;
 const LEAST_EVIDENCE: f64 = 4.5;
 /// Loss of evidence, in nats, of a species whose lines have the other sign than those of the strongest: what stands
 /// between dark lines looks bright, and the other way round.
-const OTHER_SIGN: f64 = 5.0;
+const OTHER_SIGN: f64 = 8.0;
 /// Rare isotopes that stand for a common one within the errors of velocity and scale, and the logarithm of their
 /// share: D/H 1.6e-4 (ocean water), 13C/12C 1.1e-2, 18O/16O 2.0e-3; from memory, after Meija et al. 2016, Pure Appl.
 /// Chem. 88, 293.
