@@ -2,8 +2,8 @@
 //!
 //! [`setup`] reads what the user wants to know; [`Problem`] joins it with the channels of some data, once
 //! for all pixels; [`Problem::fit`] answers for one spectrum with a [`Fit`]. Inside: starting values
-//! ([`start`]), the descent ([`solver`]), the covariance ([`uncertainty`]) and what the numbers are worth
-//! ([`verdict`]). This crate reads no data files, prints nothing and never panics on data.
+//! (`start`), the descent ([`solver`]), the covariance ([`uncertainty`]) and what the numbers are worth
+//! (`verdict`). This crate reads no data files, prints nothing and never panics on data.
 
 pub mod clouds;
 pub mod coordinate;

@@ -4,8 +4,8 @@
 ///
 /// `σ = 1.482602/√6 · median |2 y_i - y_(i-2) - y_(i+2)|`: what is smooth over five channels drops out, what
 /// is not (lines) touches few channels and does not move a median. Assumes independent noise of one size in
-/// all channels. Source: Stoehr et al. 2008 (ADASS XVII, ASP Conf. Ser. 394, 505). Accuracy: 0.83/√n of the
-/// value for n channels of pure noise, from memory; `the_noise_of_noise_is_found`.
+/// all channels. Source: Stoehr et al. 2008 (ADASS XVII, ASP Conf. Ser. 394, 505). Accuracy: about 1.4/√n of the
+/// value for n channels of pure noise (measured on draws); `the_noise_of_noise_is_found`.
 ///
 /// * `values`: one a channel, in order; NaN where there is none.
 ///

@@ -1,6 +1,6 @@
 //! One damped step after the other: Levenberg-Marquardt with bounds.
 //!
-//! Roles: the engine evaluates, [`Step`] proposes, [`descend`] runs the loop and says why it stopped.
+//! Roles: the engine evaluates, `propose` gives one step, [`descend`] runs the loop and says why it stopped.
 //! Sources: Levenberg 1944 (Quart. Appl. Math. 2, 164), Marquardt 1963 (SIAM J. 11, 431); damping schedule of
 //! Madsen, Nielsen & Tingleff 2004 (Methods for non-linear least squares problems, section 3.2); bounds by
 //! holding those values that a bound stops and the gradient pushes outwards.
