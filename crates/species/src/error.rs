@@ -116,6 +116,14 @@ pub enum SpeciesError {
         /// The difference of the levels, cm^-1.
         from_levels_per_cm: f64,
     },
+    /// A line list that holds several species, or not the one asked for.
+    #[error("{} holds {}: one must be chosen\nhint: name it in [[species]] with `molecule` and, for 160-character records, `isotopologue`", .path.display(), numbered(.found))]
+    WhichSpecies {
+        /// The file.
+        path: PathBuf,
+        /// Molecule or tag, and isotopologue, of what it holds.
+        found: Vec<(u32, u32)>,
+    },
     /// A list without rows.
     #[error("{} has no rows below its header\nhint: one row is needed for each {what}", .path.display())]
     NoRows {
@@ -139,6 +147,22 @@ pub enum SpeciesError {
         "a species of your own has no name (key `name`)\nhint: write an element and its stage, such as \"Xx I\""
     )]
     NoName,
+}
+
+fn numbered(found: &[(u32, u32)]) -> String {
+    const MOST: usize = 8;
+    let mut names: Vec<String> = found
+        .iter()
+        .take(MOST)
+        .map(|(molecule, isotopologue)| match isotopologue {
+            0 => format!("molecule {molecule}"),
+            _ => format!("molecule {molecule} isotopologue {isotopologue}"),
+        })
+        .collect();
+    if found.len() > MOST {
+        names.push(format!("{} more", found.len() - MOST));
+    }
+    names.join(", ")
 }
 
 fn did_you_mean(suggestions: &[String]) -> String {

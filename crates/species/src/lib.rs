@@ -9,6 +9,7 @@ mod diatomic;
 mod error;
 pub mod hydrogenic;
 mod line;
+pub mod line_list;
 mod natural_width;
 mod partition;
 mod partition_table;

@@ -10,6 +10,7 @@ use std::sync::Arc;
 
 use backlit_units::constants::{ATOMIC_MASS_KG, JOULE_PER_WAVENUMBER_CM};
 
+use crate::line_list::{self, Choice};
 use crate::{Grade, Kind, Level, Line, Species, SpeciesError, natural_width};
 
 /// Energies may contradict the wavelength by this much, relative.
@@ -17,13 +18,27 @@ const ENERGY_TOLERANCE: f64 = 1e-3;
 
 /// A species of the user's own.
 ///
-/// `mass_u`: mass of one particle in atomic mass units, above 0. Errors: those of [`read_lines`] and [`read_levels`],
+/// `mass_u`: mass of one particle in atomic mass units, above 0. The format of the lines is recognised by their content.
+/// Errors: those of [`read_lines`] and [`read_levels`],
 /// an empty name, an impossible mass.
 pub fn species(
     name: &str,
     mass_u: f64,
     lines_path: &Path,
     levels_path: &Path,
+) -> Result<Species, SpeciesError> {
+    chosen_species(name, mass_u, lines_path, levels_path, &Choice::default())
+}
+
+/// A species of the user's own whose lines come from a list of any format, of which `choice` may name a part.
+///
+/// Errors: those of [`species`] and of [`line_list::read`].
+pub fn chosen_species(
+    name: &str,
+    mass_u: f64,
+    lines_path: &Path,
+    levels_path: &Path,
+    choice: &Choice,
 ) -> Result<Species, SpeciesError> {
     if name.trim().is_empty() {
         return Err(SpeciesError::NoName);
@@ -34,8 +49,8 @@ pub fn species(
             mass_u,
         });
     }
-    let lines = read_lines(lines_path)?;
     let levels = read_levels(levels_path)?;
+    let lines = line_list::read(lines_path, choice, &levels)?;
     Ok(Species::new(
         name.trim(),
         mass_u * ATOMIC_MASS_KG,
