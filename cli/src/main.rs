@@ -3,6 +3,9 @@
 //! Data go to standard output, all else to standard error. Exit codes: 0 done, 1 done and the answer is no, 2 the input or
 //! the command line is wrong, 130 interrupted. Nothing here computes physics.
 
+// The doc comments of arguments are help texts: brackets in them are what a user types.
+#![allow(rustdoc::broken_intra_doc_links, rustdoc::invalid_html_tags)]
+
 mod arguments;
 mod clouds;
 mod console;

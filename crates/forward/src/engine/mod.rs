@@ -1,9 +1,9 @@
 //! The fast model: a spectrum and its derivatives in one pass, with no allocation once warm.
 //!
 //! The gas changes the background only near its lines, so the work is done there: lines that reach into
-//! each other form a group ([`groups`]); the group's optical depths and their slopes are added up on the
-//! nodes of a plan ([`absorb`]); the slabs are passed one after the other ([`transfer`]); and each node is
-//! handed to the channels that the line-spread function carries it to ([`spread`]). The smooth background
+//! each other form a group (`groups`); the group's optical depths and their slopes are added up on the
+//! nodes of a plan (`absorb`); the slabs are passed one after the other (`transfer`); and each node is
+//! handed to the channels that the line-spread function carries it to (`spread`). The smooth background
 //! is laid under it by [`crate::continuum`]. Everything that does not depend on the point in the parameter
 //! space belongs to the [`Engine`] and is shared; what does belongs to the [`Evaluation`], which a thread
 //! owns.
