@@ -99,3 +99,14 @@ pub(super) const TOLERANCE: Domain = Domain {
     hint: "relative to the highest line contrast; the default 1e-5 is finer than most data",
     holds: |x| (1e-9..=1e-2).contains(&x),
 };
+
+/// Tags of millimetre catalogues have up to six digits.
+pub(super) const MOST_MOLECULES: usize = 999_999;
+
+pub(super) const MOLECULE: Domain = Domain {
+    quantity: "number of the molecule or isotopologue",
+    unit: "",
+    allowed: "the whole numbers 1..=999999",
+    hint: "as the list itself numbers them: characters 1-2 and 3 of a record, or the tag of a millimetre catalogue",
+    holds: |x| x >= 1.0,
+};

@@ -2,6 +2,7 @@
 
 use std::path::PathBuf;
 
+use backlit_species::line_list::Choice;
 use backlit_units::Medium;
 
 /// A quantity of the setup: known, or to be found between two bounds.
@@ -167,6 +168,8 @@ pub struct UserSpecies {
     pub lines: PathBuf,
     /// The table of levels, with the setup's folder already in front.
     pub levels: PathBuf,
+    /// Format of the table of lines, and which part of it to take.
+    pub choice: Choice,
     /// The line of the section in the file.
     pub line: usize,
 }

@@ -3,13 +3,14 @@
 use std::path::Path;
 use std::str::FromStr;
 
+use backlit_species::line_list::{Choice, Format};
 use backlit_units::Medium;
 use backlit_units::intensity::IntensityUnit;
 use toml::de::{DeTable, DeValue};
 
 use super::domains::{
-    COLUMN, DILUTION, FWHM, MASS, MAX_SHAPE_TERMS, RESOLVING_POWER, SCALE, SHAPE_TERMS,
-    TEMPERATURE, TOLERANCE, TURBULENCE, VELOCITY,
+    COLUMN, DILUTION, FWHM, MASS, MAX_SHAPE_TERMS, MOLECULE, MOST_MOLECULES, RESOLVING_POWER,
+    SCALE, SHAPE_TERMS, TEMPERATURE, TOLERANCE, TURBULENCE, VELOCITY,
 };
 use super::place::line_of;
 use super::section::{Entry, Section, Source};
@@ -172,7 +173,9 @@ fn section_of(key: &str) -> Option<&'static str> {
         | "excitation_temperature_K"
         | "electron_density_cm3"
         | "column_cm2" => "[[cloud]]",
-        "name" | "mass_u" | "lines" | "levels" => "[[species]]",
+        "name" | "mass_u" | "lines" | "levels" | "format" | "molecule" | "isotopologue" => {
+            "[[species]]"
+        }
         "model_tolerance" | "scale_noise" | "robust" => "[fit]",
         _ => return None,
     })
@@ -463,6 +466,7 @@ fn user_species(path: &Path, sections: &[Section<'_, '_>]) -> Result<Vec<UserSpe
             "levels",
             "the partition function needs them: levels = \"xx-levels.csv\"",
         )?;
+        let choice = list_choice(section)?;
         section.finish(section_of)?;
         let text = name.text("name = \"Xx I\"")?.trim();
         if text.is_empty() {
@@ -483,10 +487,31 @@ fn user_species(path: &Path, sections: &[Section<'_, '_>]) -> Result<Vec<UserSpe
             mass_u: mass.number(&MASS)?,
             lines: beside(path, lines.text("lines = \"xx-lines.csv\"")?),
             levels: beside(path, levels.text("levels = \"xx-levels.csv\"")?),
+            choice,
             line: section.line(),
         });
     }
     Ok(found)
+}
+
+/// Which lines of a list: its format where the content should not decide, and the species where it holds several.
+fn list_choice(section: &Section<'_, '_>) -> Result<Choice, SetupError> {
+    const FORMAT_HINT: &str = "left out, the content of the list decides";
+    let number = |key| match section.get(key) {
+        Some(entry) => entry
+            .count(MOST_MOLECULES, &MOLECULE)
+            .map(|n| Some(n as u32)),
+        None => Ok(None),
+    };
+    let format = match section.get("format") {
+        Some(entry) => entry.word(&Format::NAMES, FORMAT_HINT)?.parse().ok(),
+        None => None,
+    };
+    Ok(Choice {
+        format,
+        molecule: number("molecule")?,
+        isotopologue: number("isotopologue")?,
+    })
 }
 
 fn fit(section: Option<&Section<'_, '_>>) -> Result<(f64, FitChoices), SetupError> {

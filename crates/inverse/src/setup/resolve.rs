@@ -73,7 +73,7 @@ impl Setup {
         self.species
             .iter()
             .map(|own| {
-                user::species(&own.name, own.mass_u, &own.lines, &own.levels)
+                user::chosen_species(&own.name, own.mass_u, &own.lines, &own.levels, &own.choice)
                     .map(Arc::new)
                     .map_err(|source| SetupError::UserTables {
                         place: Place::new(&self.path, own.line, "species"),

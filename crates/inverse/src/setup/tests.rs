@@ -554,3 +554,33 @@ fn a_file_that_cannot_be_read_is_named_with_the_systems_reason() {
     assert!(error.contains("no-such-folder/s.toml cannot be read"));
     assert!(error.contains("hint: check the path"));
 }
+
+#[test]
+fn a_line_list_of_others_can_be_named_and_chosen_from() {
+    let own = |keys: &str| {
+        Setup::parse(
+            &format!(
+                "[[species]]\nname = \"Xx\"\nmass_u = 28\nlines = \"a\"\nlevels = \"b\"\n{keys}\n[background]\nlight = \"dark\"\n[[cloud]]\ntemperature_K = 100\n[cloud.column_cm2]\n\"Xx\" = 1e15\n"
+            ),
+            Path::new("setup.toml"),
+        )
+    };
+    let choice = own("").unwrap().species[0].choice;
+    assert_eq!(choice, backlit_species::line_list::Choice::default());
+    let choice = own("format = \"record-160\"\nmolecule = 5\nisotopologue = 2\n")
+        .unwrap()
+        .species[0]
+        .choice;
+    assert_eq!(
+        choice.format,
+        Some(backlit_species::line_list::Format::Record160)
+    );
+    assert_eq!((choice.molecule, choice.isotopologue), (Some(5), Some(2)));
+    for bad in [
+        "format = \"milimetre\"",
+        "molecule = 0",
+        "isotopologue = 1.5",
+    ] {
+        assert!(own(bad).unwrap_err().to_string().contains("hint:"), "{bad}");
+    }
+}
