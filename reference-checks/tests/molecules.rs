@@ -176,7 +176,8 @@ fn the_21_cm_line_has_the_usual_optical_depth() {
             / (8.0 * std::f64::consts::PI)
             * line.a_ki_per_s
             * stimulated;
-        let column_cm2 = 1.823e18 * (2.8688e-15 / 2.8843e-15) * spin_temperature_k * depth_m_per_s / 1e3;
+        let column_cm2 =
+            1.823e18 * (2.8688e-15 / 2.8843e-15) * spin_temperature_k * depth_m_per_s / 1e3;
         assert!(
             (column_cm2 / 1e20 - 1.0).abs() < 2e-3,
             "{spin_temperature_k} K: {column_cm2:e}"
