@@ -145,6 +145,7 @@ struct LineRecord {
     expected_snr: f64,
     snr: f64,
     evidence_nats: f64,
+    share: f64,
 }
 
 impl Identify {
@@ -353,6 +354,7 @@ fn line_record(line: &LineFound) -> LineRecord {
         expected_snr: line.expected_snr,
         snr: line.snr,
         evidence_nats: line.evidence,
+        share: line.share,
     }
 }
 

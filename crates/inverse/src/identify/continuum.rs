@@ -24,7 +24,7 @@ const ROUNDS: usize = 6;
 /// What lies further off the middle of its window, in robust standard deviations, is taken for a line.
 const CLIP: f64 = 2.5;
 /// Pieces of the spectrum with a noise of their own, where it has to be estimated.
-const NOISE_PIECES: usize = 8;
+const NOISE_PIECES: usize = 20;
 
 /// Takes the smooth part away: medians of overlapping windows, clipped until lines of either sign are out, joined
 /// by straight lines.
@@ -33,7 +33,7 @@ const NOISE_PIECES: usize = 8;
 /// * `sigma`: 1 sigma of each, the same unit; `None`: estimated piece by piece by [`noise::estimate`].
 /// * `mask`: true for a channel not to be used.
 ///
-/// Lines may cover up to half of a window. `None` with fewer than [`SHORTEST_WINDOW`] usable channels.
+/// Lines may cover up to half of a window. `None` with fewer than `SHORTEST_WINDOW` usable channels.
 pub fn flatten(intensity: &[f64], sigma: Option<&[f64]>, mask: &[bool]) -> Option<Flattened> {
     let count = intensity.len();
     let usable = |k: usize| !mask[k] && intensity[k].is_finite();
@@ -127,7 +127,7 @@ fn estimated(intensity: &[f64], usable: &impl Fn(usize) -> bool) -> Vec<f64> {
     // Data without any noise would make every rounding error a line.
     let floor = (1e-6 * largest).max(f64::MIN_POSITIVE);
     let whole = noise::estimate(&known).unwrap_or(largest).max(floor);
-    let piece = count.div_ceil(NOISE_PIECES).max(4 * SHORTEST_WINDOW);
+    let piece = count.div_ceil(NOISE_PIECES).max(2 * SHORTEST_WINDOW);
     let knots: Vec<(f64, f64)> = (0..count)
         .step_by(piece)
         .map(|from| {
@@ -145,4 +145,45 @@ fn estimated(intensity: &[f64], usable: &impl Fn(usize) -> bool) -> Vec<f64> {
             }
         })
         .collect()
+}
+
+#[cfg(test)]
+#[allow(clippy::unwrap_used)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn lines_do_not_move_the_smooth_light() {
+        // A slope with lines of one sign over a third of the channels.
+        let truth = |k: usize| 100.0 + 0.01 * k as f64;
+        for height in [50.0, -50.0] {
+            let data: Vec<f64> = (0..2000)
+                .map(|k| truth(k) + if k % 12 < 4 { height } else { 0.0 } + [0.3, -0.3][k % 2])
+                .collect();
+            let flat = flatten(&data, None, &vec![false; 2000]).unwrap();
+            for k in 100..1900 {
+                assert!(
+                    (flat.continuum[k] - truth(k)).abs() < 1.0,
+                    "{k}: {}",
+                    flat.continuum[k]
+                );
+            }
+        }
+    }
+
+    #[test]
+    fn masked_channels_say_nothing_and_too_few_give_no_answer() {
+        let mut data = vec![1.0; 200];
+        data[50] = f64::NAN;
+        let mut mask = vec![false; 200];
+        mask[60] = true;
+        let flat = flatten(&data, Some(&vec![0.1; 200]), &mask).unwrap();
+        assert_eq!(
+            (flat.residual_sigmas[50], flat.residual_sigmas[60]),
+            (0.0, 0.0)
+        );
+        assert!(flat.sigma[50].is_infinite() && flat.sigma[60].is_infinite());
+        assert!(!flat.noise_is_estimated);
+        assert!(flatten(&data[..40], None, &mask[..40]).is_none());
+    }
 }

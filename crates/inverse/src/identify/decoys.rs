@@ -85,26 +85,29 @@ impl Null {
         };
         let rows: Vec<&Vec<Reached>> = decoys.iter().filter(|row| !row.is_empty()).collect();
         let usual = rows.iter().map(|row| moments(row).1).sum::<f64>() / rows.len().max(1) as f64;
+        // Two dozen draws know their own spread badly: half of it is everybody's.
+        let spread = |variance: f64| (0.5 * (variance + usual)).sqrt().max(0.3);
         let own: Vec<(f64, f64)> = decoys
             .iter()
             .map(|row| {
                 if row.is_empty() {
                     return (0.0, 1.0);
                 }
-                // Two dozen draws know their own spread badly: half of it is everybody's.
                 let (mean, variance) = moments(row);
-                (mean, (0.5 * (variance + usual)).sqrt().max(0.3))
+                (mean, spread(variance))
             })
             .collect();
-        let mut all: Vec<(f64, usize)> = decoys
-            .iter()
-            .zip(&own)
-            .flat_map(|(row, (mean, sd))| {
-                row.iter().map(move |d| ((d.evidence - mean) / sd, d.seen))
-            })
-            .collect();
-        all.sort_by(|a, b| b.0.total_cmp(&a.0));
-        let pooled: Vec<f64> = all.iter().map(|d| d.0).collect();
+        // Each decoy against the others of its species, as the real pattern will be: one that belonged to its own
+        // yardstick could never stick out far.
+        let mut pooled: Vec<f64> = Vec::new();
+        for row in rows.iter().filter(|row| row.len() > 2) {
+            for left_out in 0..row.len() {
+                let others = [&row[..left_out], &row[left_out + 1..]].concat();
+                let (mean, variance) = moments(&others);
+                pooled.push((row[left_out].evidence - mean) / spread(variance));
+            }
+        }
+        pooled.sort_by(|a, b| b.total_cmp(a));
         let count = ((TAIL_SHARE * pooled.len() as f64) as usize).max(5);
         let tail = if pooled.len() > 2 * count {
             let start = pooled[count];
@@ -148,6 +151,54 @@ impl Null {
         } else {
             let above = self.pooled.partition_point(|p| *p >= z);
             ((above as f64 + 1.0) / (self.pooled.len() as f64 + 1.0)).min(1.0)
+        }
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    fn grid() -> Grid {
+        let centres_m: Vec<f64> = (0..1000).map(|k| 500e-9 + 5e-11 * f64::from(k)).collect();
+        Grid::new(&centres_m, &[3.0; 1000], 3e-11)
+    }
+
+    #[test]
+    fn every_line_leaves_its_place_and_stays_in_the_data() {
+        let grid = grid();
+        let cells = grid.len() as i32;
+        for decoy in 0..20 {
+            let moved = Displacement::new(&grid, 3, decoy);
+            for cell in (0..cells).step_by(7) {
+                let there = moved.place(cell);
+                assert!((0..cells).contains(&there), "{cell} to {there}");
+                assert!((there - cell).abs() >= 3 * grid.usual_reach());
+                assert_eq!(there, moved.place(cell));
+            }
+        }
+    }
+
+    #[test]
+    fn the_tail_of_an_exponential_is_continued_beyond_the_decoys() {
+        // Evidence with P(> x) = exp(-x) by its quantiles, the same for 50 species.
+        let rows: Vec<Vec<Reached>> = (0..50)
+            .map(|s| {
+                (0..DECOYS)
+                    .map(|d| {
+                        let part = (f64::from(s) + 50.0 * d as f64 + 0.5) / (50.0 * DECOYS as f64);
+                        Reached {
+                            evidence: -(1.0 - part).ln(),
+                            seen: 2,
+                        }
+                    })
+                    .collect()
+            })
+            .collect();
+        let null = Null::new(&rows);
+        for x in [1.0_f64, 3.0, 5.0, 9.0] {
+            let ratio = null.rate(7, x) / (-x).exp();
+            assert!((0.4..2.5).contains(&ratio), "{x}: {ratio}");
         }
     }
 }

@@ -22,7 +22,7 @@ pub struct Expectation {
 
 impl Expectation {
     /// Normal noise on a log-normal height.
-    pub fn new() -> Expectation {
+    pub fn of_normal_noise() -> Expectation {
         let rows = (0..STEPS)
             .map(|step| {
                 let expected = (step as f64 / STEPS_PER_OCTAVE).exp2();
@@ -60,10 +60,10 @@ impl Expectation {
             .map(|row| {
                 let mut out = [0.0_f32; CODES];
                 for stretch in 0..STRETCHES {
-                    for c in 0..CLASSES {
+                    for (c, expected) in row.iter().enumerate() {
                         let code = stretch * CLASSES + c;
                         let chance = map.chance[code];
-                        let there = row[c] * (1.0 - STRANGE) / shares + STRANGE * chance;
+                        let there = expected * (1.0 - STRANGE) / shares + STRANGE * chance;
                         out[code] = (there / chance).ln() as f32;
                     }
                 }

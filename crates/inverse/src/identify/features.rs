@@ -98,12 +98,11 @@ pub fn find(flattened: &Flattened, fwhm_channels: Vec<f64>) -> Features {
         let (mut product, mut power) = (0.0, 0.0);
         let from = k.saturating_sub(reach);
         let to = (k + reach).min(count - 1);
-        for j in from..=to {
-            if flattened.sigma[j].is_finite() {
+        for (j, own) in flattened.sigma.iter().enumerate().take(to + 1).skip(from) {
+            if own.is_finite() {
                 let u = (j as f64 - k as f64) / sigma;
                 // The noise may differ from channel to channel: the shape is that of the line in units of sigma.
-                let shape = (-0.5 * u * u).exp()
-                    * (flattened.sigma[k].min(1e300) / flattened.sigma[j]).min(3.0);
+                let shape = (-0.5 * u * u).exp() * (flattened.sigma[k].min(1e300) / own).min(3.0);
                 product += shape * data[j];
                 power += shape * shape;
             }
@@ -149,4 +148,54 @@ pub fn middle(widths: &[f64]) -> f64 {
         return f64::NAN;
     }
     median(&mut widths)
+}
+
+#[cfg(test)]
+#[allow(clippy::unwrap_used)]
+mod tests {
+    use super::super::continuum::flatten;
+    use super::*;
+
+    /// Gaussian lines of one width and sign, every 60 channels, on a floor with a small ripple.
+    fn comb(fwhm: f64, height: f64) -> Flattened {
+        let sigma = fwhm / 2.354_82;
+        let data: Vec<f64> = (0..1500)
+            .map(|k| {
+                let from_line = f64::from(k % 60) - 30.3;
+                100.0
+                    + [1.0, -1.0, 0.5, -0.5][k as usize % 4]
+                    + height * (-0.5 * (from_line / sigma).powi(2)).exp()
+            })
+            .collect();
+        flatten(&data, Some(&vec![1.0; 1500]), &vec![false; 1500]).unwrap()
+    }
+
+    #[test]
+    fn the_width_of_the_instrument_is_read_off_its_lines() {
+        for fwhm in [2.5, 4.0, 8.0] {
+            for height in [90.0, -90.0] {
+                let found = estimate_fwhm_channels(&comb(fwhm, height));
+                assert!((found / fwhm - 1.0).abs() < 0.12, "{found}, not {fwhm}");
+            }
+        }
+    }
+
+    #[test]
+    fn peaks_stand_where_the_lines_are_with_their_significance() {
+        let flat = comb(4.0, 20.0);
+        let features = find(&flat, vec![4.0; 1500]);
+        let strong: Vec<&Peak> = features.bright.iter().filter(|p| p.snr > 20.0).collect();
+        assert_eq!(strong.len(), 25);
+        assert!(features.dark.iter().all(|p| p.snr < 5.0));
+        for (n, peak) in strong.iter().enumerate() {
+            assert!((peak.channel - (60.0 * n as f64 + 30.3)).abs() < 0.2);
+            // A matched filter: height times the root of the sum of squares of the shape, σ √π channels.
+            let expected = 20.0 * (4.0 / 2.354_82 * std::f64::consts::PI.sqrt()).sqrt();
+            assert!(
+                (peak.snr / expected - 1.0).abs() < 0.06,
+                "{} {expected}",
+                peak.snr
+            );
+        }
+    }
 }

@@ -68,6 +68,8 @@ pub struct LineFound {
     pub evidence: f64,
     /// What became of it.
     pub state: LineState,
+    /// Part of the light there that is this species' own, 0..=1, by the joint fit of all present ones.
+    pub share: f64,
 }
 
 /// The judgement on one species.

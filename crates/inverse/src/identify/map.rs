@@ -70,7 +70,8 @@ impl Grid {
         }
     }
 
-    /// Number of cells.
+    /// Number of cells; never 0.
+    #[allow(clippy::len_without_is_empty)]
     pub fn len(&self) -> usize {
         self.channel.len()
     }
@@ -162,8 +163,8 @@ impl Map {
             let cells: f64 = own.iter().sum::<f64>() * independent;
             // A stretch leans on the whole as if it had seen 30 positions of it; no class is impossible.
             const LEAN: f64 = 30.0;
-            for c in 0..CLASSES {
-                let prior = (whole[c] + 1.0 / CLASSES as f64) / all;
+            for (c, whole) in whole.iter().enumerate() {
+                let prior = (whole + 1.0 / CLASSES as f64) / all;
                 self.chance[stretch * CLASSES + c] =
                     (own[c] * independent + LEAN * prior) / (cells + LEAN);
             }

@@ -5,9 +5,10 @@
 //! either sign are found at the instrument's width ([`features`]) and laid on a grid of ln wavelength, where a velocity
 //! is a shift ([`map`]). A [`pattern`] says how strong the lines of a species are beside each other; its [`evidence`] is
 //! how much better it foretells the peaks than chance does, over all temperatures, heights and velocities. What the
-//! strongest species explain is taken from the others, and the same search with misplaced lines ([`decoys`]) says how
+//! strongest species explain is taken from the others (a joint fit, [`blend`], shares out what several explain), and the same search with misplaced lines ([`decoys`]) says how
 //! often such evidence comes by chance.
 
+pub mod blend;
 pub mod continuum;
 pub mod decoys;
 pub mod evidence;

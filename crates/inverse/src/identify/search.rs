@@ -1,5 +1,6 @@
 //! The search: one velocity for all, the strongest species first, then what they leave unexplained.
 
+use super::blend::{self, Shape};
 use super::continuum::{Flattened, flatten, median};
 use super::decoys::{DECOYS, Displacement, Null, Reached};
 use super::evidence::{Best, Expectation, Worth, search};
@@ -22,8 +23,8 @@ const SEEN: f64 = 3.5;
 const POSSIBLE_RATE: f64 = 0.01;
 /// Evidence below this is no reason to take part in the choice of the common velocity.
 const TAKES_PART: f64 = 5.0;
-/// The least evidence for `present`, in nats: odds of 90 to 1 whatever the decoys say.
-const LEAST_EVIDENCE: f64 = 4.5;
+/// The least evidence for `present`, in nats: odds of 55 to 1 whatever the decoys say.
+const LEAST_EVIDENCE: f64 = 4.0;
 /// Loss of evidence, in nats, of a species whose lines have the other sign than those of the strongest: what stands
 /// between dark lines looks bright, and the other way round.
 const OTHER_SIGN: f64 = 8.0;
@@ -70,7 +71,7 @@ pub fn identify(
     let fwhm_channels = fwhm_channels(centres_m, &flattened, choices.width);
     let features = features::find(&flattened, fwhm_channels);
     let grid = Grid::new(centres_m, &features.fwhm_channels, choices.scale_error_m);
-    let expectation = Expectation::new();
+    let expectation = Expectation::of_normal_noise();
     let sheets = [&features.dark, &features.bright];
     let maps = [0, 1].map(|s| Map::new(&grid, &features, sheets[s], SIGNS[s]));
     let worths = [0, 1].map(|s: usize| expectation.worth(&maps[s]));
@@ -270,6 +271,7 @@ fn judge(
         .max(1);
     // Species, sign, best, lines as they were found, rate.
     let mut accepted: Vec<(usize, Finding)> = Vec::new();
+    let mut claims: Vec<(usize, Best)> = Vec::new();
     let mut rest: Vec<Finding>;
     // What chance is expected to make, at the round in which it makes most.
     let mut by_chance: f64 = 0.0;
@@ -310,11 +312,10 @@ fn judge(
                 choices.false_discovery_rate
             };
             let weighed = best.evidence + if expected { 0.0 } else { rarity(&finding.name) };
-            if enough && share * chances <= wanted && (weighed >= LEAST_EVIDENCE || expected) {
-                if weighed > strongest {
-                    strongest = weighed;
-                    chosen = Some((index, s, best, finding.clone()));
-                }
+            let convincing = weighed >= LEAST_EVIDENCE || expected;
+            if enough && convincing && share * chances <= wanted && weighed > strongest {
+                strongest = weighed;
+                chosen = Some((index, s, best, finding.clone()));
             }
             rest.push(finding);
         }
@@ -327,6 +328,7 @@ fn judge(
         }
         claim(&mut sky, &pool[index], s, &best, expectation);
         accepted.push((index, finding));
+        claims.push((s, best));
     };
     for finding in &mut rest {
         let seen = finding.count(LineState::Seen);
@@ -343,7 +345,11 @@ fn judge(
             finding.temperature_k = None;
         }
     }
-    let present = accepted.len() as f64;
+    share_out(&sky, pool, &claims, &mut accepted);
+    let present = accepted
+        .iter()
+        .filter(|(_, f)| f.verdict == Verdict::Present)
+        .count() as f64;
     let shared: Vec<(f64, f64)> = accepted
         .iter()
         .filter_map(|(_, f)| f.velocity_m_per_s.map(|v| (v, f.evidence)))
@@ -358,6 +364,7 @@ fn judge(
     });
     let mut species: Vec<Finding> = accepted.into_iter().map(|(_, f)| f).collect();
     species.extend(rest);
+    species.sort_by_key(|f| f.verdict as u8);
     let middle = centres_m.len() / 2;
     Identification {
         species,
@@ -372,6 +379,74 @@ fn judge(
             f64::NAN
         },
         continuum: sky.flattened.continuum,
+    }
+}
+
+/// Shares blends out among the accepted species; one that owns nothing then is only possible.
+fn share_out(
+    sky: &Sky,
+    pool: &[Candidate],
+    claims: &[(usize, Best)],
+    accepted: &mut [(usize, Finding)],
+) {
+    for (sign, factor) in SIGNS.into_iter().enumerate() {
+        let mut shapes: Vec<Shape> = Vec::new();
+        for (nth, ((s, best), (index, _))) in claims.iter().zip(accepted.iter()).enumerate() {
+            if *s != sign {
+                continue;
+            }
+            let pattern = &pool[*index].patterns[*s][best.pattern];
+            let expected = pattern
+                .lines
+                .iter()
+                .filter(|l| usize::from(l.below) <= best.top);
+            shapes.extend(expected.filter_map(|line| {
+                let cell = usize::try_from(line.cell + best.shift).ok()?;
+                let channel = f64::from(*sky.grid.channel.get(cell)?);
+                let k = (channel.round() as usize).min(sky.features.gain.len() - 1);
+                Some(Shape {
+                    species: nth,
+                    channel,
+                    fwhm_channels: sky.features.fwhm_channels[k],
+                    height: height(best.top - usize::from(line.below)) * sky.features.gain[k],
+                })
+            }));
+        }
+        if shapes.is_empty() {
+            continue;
+        }
+        let data: Vec<f64> = sky
+            .flattened
+            .residual_sigmas
+            .iter()
+            .map(|residual| factor * residual)
+            .collect();
+        let amounts = blend::shares(&data, &shapes, accepted.len());
+        for (nth, (_, finding)) in accepted.iter_mut().enumerate() {
+            if claims[nth].0 != sign {
+                continue;
+            }
+            if amounts[nth] == 0.0 {
+                finding.verdict = Verdict::Possible;
+            }
+            let own = shapes.iter().filter(|shape| shape.species == nth);
+            let inside = |line: &&mut LineFound| line.state != LineState::Outside;
+            for (line, shape) in finding.lines.iter_mut().filter(inside).zip(own) {
+                let at = |other: &Shape| {
+                    let u = 2.354_82 * (other.channel - shape.channel) / shape.fwhm_channels;
+                    amounts[other.species] * other.height * (-0.5 * u * u).exp()
+                };
+                let (mut all, mut mine) = (0.0, 0.0);
+                for other in &shapes {
+                    let part = at(other);
+                    all += part;
+                    if other.species == nth {
+                        mine += part;
+                    }
+                }
+                line.share = if all > 0.0 { mine / all } else { 0.0 };
+            }
+        }
     }
 }
 
@@ -489,6 +564,7 @@ fn line_found(
         snr,
         evidence,
         state,
+        share: 1.0,
     }
 }
 
