@@ -160,6 +160,14 @@ pub enum Failure {
         /// What the system said.
         source: io::Error,
     },
+    /// A cube in which no spectrum can be fitted.
+    #[error("{}: none of the {total} spectra has as many usable channels as free values (no data, NaN, masked, or without a usable uncertainty)\nhint: check `/intensity` and `/uncertainty` of the cube, and `spectrum.use_nm` of the setup", path.display())]
+    NoUsableSpectrum {
+        /// The cube.
+        path: PathBuf,
+        /// Its spectra.
+        total: u64,
+    },
     /// A file that is there already.
     #[error("{} exists already\nhint: choose another name, or give --overwrite to replace it", path.display())]
     Exists {

@@ -7,7 +7,7 @@ use std::time::{Instant, SystemTime};
 
 use backlit_cubes::{Cube, FlagName, MapsSpec, MapsWriter, Tile, TileData};
 use backlit_inverse::setup::Setup;
-use backlit_inverse::{Intervals, Problem};
+use backlit_inverse::{Flags, Intervals, Problem};
 use backlit_species::Catalogue;
 use clap::Args;
 use rayon::ThreadPool;
@@ -165,6 +165,20 @@ impl Map {
                 done: total - to_do + count.pixels,
                 total,
                 journal: journal_of(&self.output),
+            });
+        }
+        let too_little = Flags::TOO_LITTLE_DATA.trailing_zeros() as usize;
+        if count.pixels == total && count.flags.get(too_little) == Some(&total) {
+            // Maps of nothing would look like an answer.
+            drop(writer);
+            let journal = journal_of(&self.output);
+            std::fs::remove_file(&journal).map_err(|source| Failure::Write {
+                path: journal,
+                source,
+            })?;
+            return Err(Failure::NoUsableSpectrum {
+                path: self.cube.clone(),
+                total,
             });
         }
         let end = BTreeMap::from([("end_time".to_owned(), now())]);

@@ -227,3 +227,87 @@ fn a_measured_background_takes_the_place_of_the_black_body() {
     desk.run(&["fit", "n.csv", "--setup", "measured.toml"])
         .refused(&["bare.csv covers 589.000..592.000 nm", "588.000..591.000 nm"]);
 }
+
+#[test]
+fn intervals_are_walked_out_on_demand_and_match_sigma_where_that_is_valid() {
+    let desk = desk(&["--noise", "400"]);
+    let arguments = ["fit", "p.csv", "--setup", "open.toml", "--json"];
+    let plain = desk.run(&arguments).json();
+    assert_eq!(plain["intervals"], serde_json::json!({}));
+    let document = desk
+        .run(&[&arguments[..], &["--intervals"]].concat())
+        .json();
+    for (name, _) in TRUTH {
+        let number = |field: &str| document[field][name].as_f64().unwrap();
+        let interval = &document["intervals"][name];
+        assert_eq!(interval["level"], 0.683);
+        let (low, high) = (
+            interval["low"].as_f64().unwrap(),
+            interval["high"].as_f64().unwrap(),
+        );
+        let (value, sigma) = (number("values"), number("sigma"));
+        // A fifth: the curvature of the valley over one standard deviation.
+        for reach in [value - low, high - value] {
+            assert!((reach / sigma - 1.0).abs() < 0.2, "{name}: {reach} {sigma}");
+        }
+    }
+    let text = desk
+        .run(&["fit", "p.csv", "--setup", "open.toml", "--intervals"])
+        .done();
+    assert!(text.contains("interval of 68.3 %"), "{text}");
+}
+
+#[test]
+fn an_opaque_line_gets_an_interval_unasked() {
+    let desk = desk(&[]);
+    desk.write(
+        "thick.toml",
+        desk.read("s.toml").replace("start = 2e12", "start = 3e15"),
+    );
+    desk.run(&["predict", "thick.toml", "--noise", "30", "-o", "t.csv"])
+        .done();
+    let document = desk
+        .run(&["fit", "t.csv", "--setup", "open.toml", "--json"])
+        .json();
+    assert!(
+        document["flags"].as_array().is_some_and(|f| !f.is_empty()),
+        "{document}"
+    );
+    let intervals = document["intervals"].as_object().unwrap();
+    assert!(
+        intervals.contains_key("cloud1_log10_column_Na_I"),
+        "{document}"
+    );
+}
+
+#[test]
+fn the_number_of_clouds_comes_with_its_evidence() {
+    let desk = desk(&["--noise", "100"]);
+    let arguments = [
+        "fit",
+        "p.csv",
+        "--setup",
+        "open.toml",
+        "--clouds",
+        "up-to-2",
+    ];
+    let document = desk.run(&[&arguments[..], &["--json"]].concat()).json();
+    let clouds = &document["clouds"];
+    assert_eq!(clouds["chosen"], 1);
+    let tried = clouds["tried"].as_array().unwrap();
+    assert_eq!(tried.len(), 2);
+    for one in tried {
+        let number = |field: &str| one[field].as_f64().unwrap();
+        let bic = number("chi2") + number("free_values") * number("channels").ln();
+        assert!((number("bic") - bic).abs() < 1e-9 * bic);
+    }
+    let text = desk.run(&arguments).done();
+    assert!(text.contains("<- chosen"), "{text}");
+    let wrong = desk.run(&["fit", "p.csv", "--setup", "open.toml", "--clouds", "4"]);
+    assert_eq!(wrong.code, 2);
+    assert!(wrong.stderr.contains("up-to-3"), "{}", wrong.stderr);
+    let cloud = &SODIUM[SODIUM.find("[[cloud]]").unwrap()..];
+    desk.write("two.toml", format!("{SODIUM}{cloud}"));
+    desk.run(&["fit", "p.csv", "--setup", "two.toml", "--clouds", "up-to-2"])
+        .refused(&["2 clouds", "exactly 1 is needed", "two.toml"]);
+}

@@ -318,3 +318,31 @@ fn an_interrupted_run_says_how_to_continue_and_continues_to_the_same_maps() {
     desk.run(&whole).done();
     assert!(same(&maps(&desk, "m.h5"), &maps(&desk, "whole.h5")));
 }
+
+#[test]
+fn intervals_are_maps_of_their_own_on_demand() {
+    let desk = desk(2, 3);
+    let plain = ["map", "c.h5", "--setup", "s.toml", "-o"];
+    desk.run(&[&plain[..], &["m.h5"]].concat()).done();
+    desk.run(&[&plain[..], &["i.h5", "--intervals"]].concat())
+        .done();
+    let names = |file: &str| -> Vec<String> {
+        maps(&desk, file)
+            .into_iter()
+            .map(|(name, _)| name)
+            .collect()
+    };
+    assert!(!names("m.h5").iter().any(|name| name.ends_with("_low")));
+    let with = maps(&desk, "i.h5");
+    let map = |name: &str| &with.iter().find(|(found, _)| found == name).unwrap().1;
+    for name in ["cloud1_velocity", "cloud1_log10_column_Na_I"] {
+        let (low, high) = (map(&format!("{name}_low")), map(&format!("{name}_high")));
+        for ((value, low), high) in map(name).iter().zip(low).zip(high) {
+            // The pixel without data has no interval either.
+            assert!(
+                low < value && value < high || value.is_nan() && low.is_nan(),
+                "{name}: {low} {value} {high}"
+            );
+        }
+    }
+}
