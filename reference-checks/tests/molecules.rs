@@ -169,7 +169,7 @@ fn the_21_cm_line_has_the_usual_optical_depth() {
         let q = hydrogen.partition_function(spin_temperature_k).ln_q.exp();
         assert!((q - 2.0).abs() < 0.01, "{q}");
         let column_m2 = 1e24;
-        let lower_m2 = column_m2 * line.g_lower / q;
+        let lower_m2 = column_m2 * line.g_lower / q * (-line.e_lower_j / kt_j).exp();
         let stimulated = 1.0 - (-6.626_070_15e-34 * frequency_hz / kt_j).exp();
         // Optical depth times velocity, m/s: the integral over frequency times the wavelength.
         let depth_m_per_s = lower_m2 * line.g_upper / line.g_lower * line.wavelength_vac_m.powi(3)

@@ -12,7 +12,7 @@ use crate::{Kind, Line, natural_width};
 /// One debye, 1e-18 esu cm, in C m: 1e-21 over the speed of light's number.
 const DEBYE_C_M: f64 = 1e-21 / SPEED_OF_LIGHT_M_PER_S;
 /// Lines with less than this part of their level's whole strength are left out.
-const WEAKEST_PART: f64 = 1e-5;
+const WEAKEST_PART: f64 = 1e-4;
 
 /// All lines of all bands; energies count from `zero_per_cm`.
 pub(super) fn all(molecule: &Molecule, zero_per_cm: f64) -> Vec<Line> {

@@ -128,11 +128,20 @@ fn pi_matrix(constants: &Constants, j: f64, is_e: bool) -> [f64; 3] {
 
 /// Eigenvalues, rising, and unit eigenvectors of the symmetric matrix [[low, off], [off, high]].
 fn eigen(low: f64, off: f64, high: f64) -> [(f64, [f64; 2]); 2] {
-    // Jacobi's rotation: exact, and smooth where the levels cross.
-    let angle = 0.5 * (2.0 * off).atan2(low - high);
-    let (sin, cos) = angle.sin_cos();
     let mean = 0.5 * (low + high);
-    let half = (0.5 * (low - high)).hypot(off);
+    let difference = 0.5 * (low - high);
+    let half = (difference * difference + off * off).sqrt();
+    if half == 0.0 {
+        return [(mean, [0.0, 1.0]), (mean, [1.0, 0.0])];
+    }
+    // The larger of the two components first, so that nothing cancels.
+    let large = (0.5 * (1.0 + difference.abs() / half)).sqrt();
+    let small = 0.5 * off / (half * large);
+    let [cos, sin] = if difference >= 0.0 {
+        [large, small]
+    } else {
+        [small, large]
+    };
     [(mean - half, [-sin, cos]), (mean + half, [cos, sin])]
 }
 

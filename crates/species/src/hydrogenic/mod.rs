@@ -77,10 +77,9 @@ impl Nucleus {
 /// The species of a nucleus with one electron, levels up to [`N_MAX`], lines merged where closer than 0.3 km/s.
 pub fn species(nucleus: Nucleus) -> Species {
     let mass_kg = (nucleus.mass_in_electrons() + 1.0) * ELECTRON_MASS_U * ATOMIC_MASS_KG;
-    let mut levels: Vec<Level> = (1..=N_MAX).map(|n| shell(nucleus, n)).collect();
+    let levels: Vec<Level> = (1..=N_MAX).map(|n| shell(nucleus, n)).collect();
     let mut lines = lines::merged(nucleus, N_MAX);
     if nucleus == Nucleus::Proton {
-        levels.splice(..1, hyperfine::ground_levels());
         lines.push(hyperfine::line_21_cm());
     }
     Species::new(nucleus.species_name(), mass_kg, lines, levels)
