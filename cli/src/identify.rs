@@ -61,7 +61,7 @@ pub struct Identify {
     scale_error: Option<f64>,
 
     /// Draw spectrum and claimed lines, .svg
-    #[arg(long, value_name = "OUT.svg")]
+    #[arg(long, value_name = "OUT.svg", value_parser = svg)]
     plot: Option<PathBuf>,
 
     /// Replace the picture if it exists
@@ -96,6 +96,18 @@ impl FromStr for VelocityRange {
             }),
             _ => Err("expected two rising velocities in km/s, within ±100000, with two dots between, for example -100..100".to_owned()),
         }
+    }
+}
+
+fn svg(text: &str) -> Result<PathBuf, String> {
+    let path = PathBuf::from(text);
+    if path
+        .extension()
+        .is_some_and(|ending| ending.eq_ignore_ascii_case("svg"))
+    {
+        Ok(path)
+    } else {
+        Err("expected a name that ends in .svg, the one format of this picture".to_owned())
     }
 }
 

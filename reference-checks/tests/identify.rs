@@ -59,6 +59,9 @@ fn width(depth: f64) -> f64 {
     step * (at(0) + 2.0 * (1..=HALF).map(at).sum::<f64>())
 }
 
+/// Rest wavelength and equivalent width of each line, in m.
+type Lines = Vec<(f64, f64)>;
+
 /// Lines of a species as (rest wavelength, equivalent width), both in m, for a depth of the thickest.
 fn lines(
     species: &Species,
@@ -66,7 +69,7 @@ fn lines(
     temperature_k: f64,
     b_m_s: f64,
     depth: f64,
-) -> Vec<(f64, f64)> {
+) -> Lines {
     let inside = species.lines_between(range_m.0, range_m.1);
     let strength = |line: &backlit_species::Line| {
         let photon = HC_OVER_K / (line.wavelength_vac_m * temperature_k);
@@ -127,7 +130,7 @@ fn mixture(seed: u64) -> Mixture {
         0.9394 * width_m / fwhm_of(w) * contrast * SIGNAL_TO_NOISE * averaged
     };
     let count = 1 + (chance.unit() * 6.0) as usize;
-    let mut chosen: Vec<(Arc<Species>, Vec<(f64, f64)>)> = Vec::new();
+    let mut chosen: Vec<(Arc<Species>, Lines)> = Vec::new();
     let mut tries = 0;
     while chosen.len() < count && tries < 200 {
         tries += 1;

@@ -137,6 +137,13 @@ fn too_short_a_spectrum_and_a_wrong_range_are_refused() {
         "{}",
         outcome.stderr
     );
+    let outcome = desk.run(&["identify", "a.csv", "--plot", "p.png"]);
+    assert_eq!(outcome.code, 2);
+    assert!(
+        outcome.stderr.contains("ends in .svg"),
+        "{}",
+        outcome.stderr
+    );
     desk.run(&["identify", "a.csv", "--among", "Nq I"])
         .refused(&["Nq I"]);
 }
