@@ -431,7 +431,7 @@ fn table(answer: &Identification) -> String {
     if answer.false_discovery_rate.is_finite() {
         let _ = writeln!(
             text,
-            "of those present, a share of at most {:.2} is expected to be there by chance",
+            "of those present, a share of about {:.2} is expected to be there by chance",
             answer.false_discovery_rate
         );
     }
