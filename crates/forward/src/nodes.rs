@@ -43,20 +43,38 @@ const THIN_DEPTH: f64 = 0.04;
 const SLIGHT_DAMPING: f64 = 1e-9;
 
 impl Shape {
-    /// Rounds the shape of a line.
+    /// Rounds the shape of a line; it reaches nowhere until [`Shape::reaching`].
     ///
     /// * `width`: 1/e half-width over wavelength; `depth`: optical depth scale at the centre.
-    /// * `reach`: distance in widths beyond which the line is not seen.
-    /// * `spread`: standard deviation of the line-spread function over wavelength.
-    pub fn rounded(width: f64, depth: f64, damping: f64, reach: f64, spread: f64) -> Self {
+    pub fn rounded(width: f64, depth: f64, damping: f64) -> Self {
         Shape {
             centre: 0,
             width: (4.0 * width.log2()).round() as i16,
             depth: (2.0 * depth.max(THIN_DEPTH).log2()).ceil() as i16,
             damping: (2.0 * damping.max(SLIGHT_DAMPING).log2()).ceil() as i16,
-            reach: (8.0 * reach.log2()).ceil() as i16,
-            spread: (8.0 * spread.max(1e-12).log2()).floor() as i16,
+            reach: 0,
+            spread: 0,
         }
+    }
+
+    /// The same shape with its reach.
+    ///
+    /// * `reach`: distance in rounded widths beyond which the line is not seen.
+    /// * `spread`: standard deviation of the line-spread function over wavelength.
+    pub fn reaching(mut self, reach: f64, spread: f64) -> Self {
+        self.reach = (8.0 * reach.log2()).ceil() as i16;
+        self.spread = (8.0 * spread.max(1e-12).log2()).floor() as i16;
+        self
+    }
+
+    /// The rounded depth, from above.
+    pub fn rounded_depth(&self) -> f64 {
+        (0.5 * f64::from(self.depth)).exp2()
+    }
+
+    /// The rounded damping, from above.
+    pub fn rounded_damping(&self) -> f64 {
+        (0.5 * f64::from(self.damping)).exp2()
     }
 
     /// The same shape with its centre at `place` (in the unit of [`Shape::width`]: relative wavelength).
@@ -77,8 +95,7 @@ impl Shape {
 
     /// Depth, damping and centre as the planner takes them.
     fn feature(&self, digits: f64) -> Feature {
-        let depth = (0.5 * f64::from(self.depth)).exp2();
-        let damping = (0.5 * f64::from(self.damping)).exp2();
+        let (depth, damping) = (self.rounded_depth(), self.rounded_damping());
         let width = self.relative_width();
         let centre = 0.125 * self.centre as f64 * width;
         let mut bumps = Vec::new();

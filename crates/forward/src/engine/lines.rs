@@ -140,7 +140,7 @@ pub fn update(
                 x_by_velocity: state.shift_per_velocity / relative_width,
                 own_doppler_temperature: cloud.own_doppler_temperature,
                 visibility: visibility(depth, damping, sigma),
-                shape: Shape::rounded(relative_width, depth, damping, 1.0, 1.0),
+                shape: Shape::rounded(relative_width, depth, damping),
             });
         }
     }
@@ -151,29 +151,22 @@ pub fn update(
     let floor = engine.sightline.tolerance * 0.2 * strongest.max(1e-300).log2().floor().exp2();
     let span = engine.sightline.channels.span_vac_m().unwrap_or((0.0, 0.0));
     lines.retain_mut(|line| {
-        let width_m = line.centre_m * line.relative_width;
-        let reach = reach(
-            line.depth,
-            line.damping.y(),
-            engine.blur_m(line.centre_m) / width_m,
-            floor,
+        // The reach follows from the rounded shape, so that it adds few kinds of plans of its own.
+        let width_m = line.centre_m * line.shape.relative_width();
+        let (depth, damping) = (line.shape.rounded_depth(), line.shape.rounded_damping());
+        let blur = engine.blur_m(line.centre_m) / width_m;
+        let Some(reach) = reach(depth, damping, blur, floor) else {
+            return false;
+        };
+        // Light further away than the line-spread function reaches from the last channel is not seen.
+        let (first_m, last_m) = span;
+        let away_m = (line.centre_m - first_m).max(last_m - line.centre_m);
+        let seen = (away_m + 8.0 * line_spread.sigma_m(last_m)) / width_m;
+        line.shape = line.shape.reaching(
+            reach.min(seen.max(1.5)),
+            line_spread.sigma_m(line.centre_m) / line.centre_m,
         );
-        if let Some(reach) = reach {
-            // Light further away than the line-spread function reaches from the last channel is not seen.
-            let (first_m, last_m) = span;
-            let away_m = (line.centre_m - first_m).max(last_m - line.centre_m);
-            // A tenth more, because the width in which the reach is counted is rounded by up to that.
-            let seen = 1.1 * (away_m + 8.0 * line_spread.sigma_m(last_m)) / width_m;
-            let reach = reach.min(seen.max(1.5));
-            line.shape = Shape::rounded(
-                line.relative_width,
-                line.depth,
-                line.damping.y(),
-                reach,
-                line_spread.sigma_m(line.centre_m) / line.centre_m,
-            );
-        }
-        reach.is_some()
+        true
     });
 }
 
