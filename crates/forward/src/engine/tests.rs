@@ -285,8 +285,8 @@ fn derivatives_agree_with_finite_differences() {
             .map(|c| at.slopes(c)[column].abs())
             .fold(0.0, f64::max);
         assert!(largest > 0.0, "parameter {p} has no effect");
-        for channel in 0..channels {
-            let finite = (sides[0][channel] - sides[1][channel]) / (2.0 * step);
+        for (channel, (after, before)) in sides[0].iter().zip(&sides[1]).enumerate() {
+            let finite = (after - before) / (2.0 * step);
             let slope = at.slopes(channel)[column];
             assert!(
                 (finite - slope).abs() < 2e-5 * largest,
