@@ -316,14 +316,16 @@ impl Problem {
             self.clamp(&mut parameters);
             let descent = self.descend_with(workspace, &mut parameters, LAST_ROUND);
             let acceptable = descent.chi_square < degrees + ACCEPTABLE * (2.0 * degrees).sqrt();
-            if descent.stop.is_minimum() && acceptable {
-                return Best {
-                    parameters,
-                    descent,
-                    rivals: Vec::new(),
-                };
-            }
             field.push((parameters, descent));
+            if descent.stop.is_minimum() && acceptable {
+                // A neighbour may sit in a twin of the minimum that describes the data within the noise as
+                // well: what the data themselves suggest first must lead to the same place, or wins.
+                if let Some(mut challenger) = start::starts(self, workspace).into_iter().next() {
+                    let descent = self.descend_with(workspace, &mut challenger, LAST_ROUND);
+                    field.push((challenger, descent));
+                }
+                return self.ranked(workspace, field);
+            }
         }
         for mut start in ask
             .starts
@@ -341,6 +343,11 @@ impl Problem {
                 *descent = self.descend_with(workspace, parameters, LAST_ROUND);
             }
         }
+        self.ranked(workspace, field)
+    }
+
+    /// The best of a field, the others as its rivals.
+    fn ranked(&self, workspace: &mut Workspace, mut field: Vec<(Vec<f64>, Descent)>) -> Best {
         field.sort_by(|a, b| a.1.chi_square.total_cmp(&b.1.chi_square));
         let mut ranked = field.into_iter();
         let Some((parameters, descent)) = ranked.next() else {
