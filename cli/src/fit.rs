@@ -288,6 +288,12 @@ fn rounded(value: f64, sigma: f64) -> (String, String) {
     if !(sigma.is_finite() && sigma > 0.0) {
         return (format!("{value:.6}"), "-".to_owned());
     }
+    let size = value.abs().max(sigma);
+    if size < 1e-4 || size >= 1e9 {
+        // As many digits as the uncertainty leaves.
+        let digits = (1.0 + size.log10().floor() - sigma.log10().floor()).clamp(1.0, 12.0) as usize;
+        return (format!("{value:.digits$e}"), format!("{sigma:.1e}"));
+    }
     let decimals = (1.0 - sigma.log10().floor()).clamp(0.0, 9.0) as usize;
     (format!("{value:.decimals$}"), format!("{sigma:.decimals$}"))
 }
@@ -305,6 +311,8 @@ mod tests {
         assert_eq!(shown(1503.1514, 12.34), "1503 12");
         assert_eq!(shown(-20.00123, 0.0344), "-20.001 0.034");
         assert_eq!(shown(12.5, f64::NAN), "12.500000 -");
+        assert_eq!(shown(1.2345e-20, 3.4e-22), "1.234e-20 3.4e-22");
+        assert_eq!(shown(5.6789e12, 1.23e10), "5.679e12 1.2e10");
         assert_eq!(shown(f64::NAN, 1.0), "- -");
     }
 }

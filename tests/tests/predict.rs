@@ -177,7 +177,7 @@ fn the_table_of_a_cube_is_checked_before_anything_is_written() {
         ),
         (
             "y,x,cloud1_velocity\n0,9,1\n",
-            &["v.csv line 2", "column `x`", "found `9`", "0..2"],
+            &["v.csv line 2", "column `x`", "found `9`", "from 0 to 1"],
         ),
         (
             "y,x,cloud1_velocity\n0,1,fast\n",
