@@ -94,7 +94,7 @@ impl Shape {
     }
 
     /// Depth, damping and centre as the planner takes them.
-    fn feature(&self, digits: f64) -> Feature {
+    fn feature(&self, digits: f64, spacing_per_sigma: f64) -> Feature {
         let (depth, damping) = (self.rounded_depth(), self.rounded_damping());
         let width = self.relative_width();
         let centre = 0.125 * self.centre as f64 * width;
@@ -131,15 +131,16 @@ impl Shape {
             let spacing = 2.0 * std::f64::consts::PI * wing_edge * (digits / 0.945).powf(-1.5);
             bump(0.6 * wing_edge, 1.2 * spacing, 0.8 * wing_edge);
         }
+        // Beyond a few steps of the kernel's own spacing a wing is smooth on those steps already.
+        let wing_extent = wing_edge.max(3.0 + edge) * width;
+        let kernel_extent = 3.0 * spacing_per_sigma * (0.125 * f64::from(self.spread)).exp2();
+        let has_wing = damping > 2.0 * SLIGHT_DAMPING && wing_extent < kernel_extent;
         Feature {
             centre,
             bumps,
-            wing: if damping > 2.0 * SLIGHT_DAMPING {
-                WING_DENSITY * digits / 15.0
-            } else {
-                0.0
-            },
-            wing_extent: wing_edge.max(3.0 + edge) * width,
+            wing: if has_wing { WING_DENSITY * digits / 15.0 } else { 0.0 },
+            wing_extent,
+            kernel_extent,
             reach: self.relative_reach(),
             edge: edge.max(wing_edge) * width,
             width,
@@ -166,9 +167,10 @@ struct Bump {
 struct Feature {
     centre: f64,
     bumps: Vec<Bump>,
-    /// Density `wing/sqrt((z - centre)² + wing_extent²)`.
+    /// Density `wing/sqrt((z - centre)² + wing_extent²)` less the same with `kernel_extent`.
     wing: f64,
     wing_extent: f64,
+    kernel_extent: f64,
     reach: f64,
     edge: f64,
     width: f64,
@@ -185,11 +187,15 @@ impl Feature {
             u += bump.extent / bump.spacing * t.atan();
             slope += 1.0 / (bump.spacing * (1.0 + t * t));
         }
-        let t = (z - self.centre) / self.wing_extent;
-        (
-            u + self.wing * t.asinh(),
-            slope + self.wing / (self.wing_extent * (1.0 + t * t).sqrt()),
-        )
+        if self.wing > 0.0 {
+            let near = (z - self.centre) / self.wing_extent;
+            let far = (z - self.centre) / self.kernel_extent;
+            u += self.wing * (near.asinh() - far.asinh());
+            slope += self.wing
+                * (1.0 / (self.wing_extent * (1.0 + near * near).sqrt())
+                    - 1.0 / (self.kernel_extent * (1.0 + far * far).sqrt()));
+        }
+        (u, slope)
     }
 }
 
@@ -251,7 +257,7 @@ impl Planner {
         }
         let features: Vec<Feature> = shapes
             .iter()
-            .map(|shape| shape.feature(self.digits))
+            .map(|shape| shape.feature(self.digits, self.spacing_per_sigma))
             .collect();
         let plan = if surroundings.sharp {
             self.panels(&features, surroundings)
