@@ -138,7 +138,11 @@ impl Shape {
         Feature {
             centre,
             bumps,
-            wing: if has_wing { WING_DENSITY * digits / 15.0 } else { 0.0 },
+            wing: if has_wing {
+                WING_DENSITY * digits / 15.0
+            } else {
+                0.0
+            },
             wing_extent,
             kernel_extent,
             reach: self.relative_reach(),

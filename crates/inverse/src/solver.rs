@@ -101,12 +101,12 @@ impl Room {
     }
 }
 
-/// Predicted change of chi-square below which a place counts as the minimum: a thousandth of a standard
+/// Predicted change of chi-square below which a place counts as the minimum: a ten-thousandth of a standard
 /// deviation. The step that promises it is still taken.
-pub const STOP_CHI_SQUARE: f64 = 1e-6;
+pub const STOP_CHI_SQUARE: f64 = 1e-8;
 
 /// The same for a step that is taken unseen: what it leaves is its square.
-const LAST_CHI_SQUARE: f64 = 1e-8;
+const LAST_CHI_SQUARE: f64 = 1e-11;
 
 /// Goes down from `parameters` to the nearest minimum; `parameters` ends there.
 pub fn descend(

@@ -52,6 +52,8 @@ pub struct Evaluation {
     free: Vec<usize>,
     stride: usize,
     rows: Vec<f64>,
+    /// Where the first row begins.
+    offset: usize,
     continuum: ContinuumColumns,
     planner: Planner,
     lines: Vec<LineState>,
@@ -138,11 +140,16 @@ impl Engine {
             column_of[parameter] = column + 1;
         }
         let stride = (free.len() + 1).next_multiple_of(LANES);
+        let room = (self.sightline.channels.len() + 2 * LANES + 1) * stride;
+        let rows = vec![0.0; room];
+        // Vectors that straddle two cache lines cost twice: start on one.
+        let offset = rows.as_ptr().align_offset(64).min(stride);
         Evaluation {
             column_of,
             free: free.to_vec(),
             stride,
-            rows: vec![0.0; (self.sightline.channels.len() + 2 * LANES) * stride],
+            rows,
+            offset,
             continuum: ContinuumColumns::default(),
             planner: Planner::new(0.1 * self.sightline.tolerance),
             lines: Vec::new(),
@@ -173,6 +180,7 @@ impl Engine {
             column_of,
             stride,
             rows,
+            offset,
             continuum,
             planner,
             lines,
@@ -186,6 +194,7 @@ impl Engine {
         } = evaluation;
         *nodes_used = 0;
         let stride = *stride;
+        let rows = &mut rows[*offset..];
         self.lay_background(parameters, continuum, column_of, stride, rows);
         groups.form(lines);
         for group in groups.iter() {
@@ -281,12 +290,12 @@ impl Evaluation {
 
     /// Model value of a channel, in W m⁻² sr⁻¹ m⁻¹ × scale.
     pub fn value(&self, channel: usize) -> f64 {
-        self.rows[channel * self.stride]
+        self.rows[self.offset + channel * self.stride]
     }
 
     /// Derivatives of a channel by the free parameters.
     pub fn slopes(&self, channel: usize) -> &[f64] {
-        let start = channel * self.stride + 1;
+        let start = self.offset + channel * self.stride + 1;
         &self.rows[start..start + self.free.len()]
     }
 
@@ -294,7 +303,13 @@ impl Evaluation {
     ///
     /// * `data`, `weight`: one a channel in use; weight = 1/σ², 0 for a channel not to be used.
     pub fn gram(&self, data: &[f64], weight: &[f64], gram: &mut Gram) {
-        gram.accumulate(&self.rows, self.stride, self.free.len(), data, weight);
+        gram.accumulate(
+            &self.rows[self.offset..],
+            self.stride,
+            self.free.len(),
+            data,
+            weight,
+        );
     }
 
     /// Optical depth at the centre of the deepest line, and of every cloud and species.
