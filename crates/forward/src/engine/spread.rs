@@ -116,7 +116,14 @@ impl Kernel for Spread<'_> {
         let Some(vector) = R::vector() else { return };
         let edges = &run.edges_m;
         let wavelengths = &field.wavelength_m.as_flattened()[..field.nodes];
-        let (mut first, mut own) = (0, 0);
+        let Some(&nearest) = wavelengths.first() else {
+            return;
+        };
+        let channel_of =
+            |wavelength: f64| edges[..run.channels].partition_point(|&edge| edge <= wavelength);
+        let mut own = channel_of(nearest).saturating_sub(1);
+        let mut first =
+            channel_of(nearest - REACH_IN_SIGMAS * line_spread.sigma_m(nearest)).saturating_sub(1);
         for (&wavelength, light) in wavelengths.iter().zip(field.rows.chunks_exact(stride)) {
             let sigma = line_spread.sigma_m(wavelength);
             let reach = REACH_IN_SIGMAS * sigma;
