@@ -289,7 +289,7 @@ fn rounded(value: f64, sigma: f64) -> (String, String) {
         return (format!("{value:.6}"), "-".to_owned());
     }
     let size = value.abs().max(sigma);
-    if size < 1e-4 || size >= 1e9 {
+    if !(1e-4..1e9).contains(&size) {
         // As many digits as the uncertainty leaves.
         let digits = (1.0 + size.log10().floor() - sigma.log10().floor()).clamp(1.0, 12.0) as usize;
         return (format!("{value:.digits$e}"), format!("{sigma:.1e}"));
