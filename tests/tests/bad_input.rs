@@ -3,7 +3,7 @@
 
 mod program;
 
-use program::{Desk, SODIUM, SPECTRUM, attribute, write_cube};
+use program::{Desk, SODIUM, SPECTRUM, attribute, write_cube, write_cube_of};
 
 const UNIT: &str = "W m-2 sr-1 nm-1";
 
@@ -304,10 +304,12 @@ fn a_folder_in_which_the_system_allows_no_files() {
 fn a_cube_without_any_number() {
     let desk = Desk::laid();
     let wavelength_nm: Vec<f64> = (0..40).map(|k| 588.0 + 0.05 * f64::from(k)).collect();
-    write_cube(&desk.path("c.h5"), &wavelength_nm, (2, 3, 40), UNIT);
-    let file = hdf5::File::open_rw(desk.path("c.h5")).unwrap();
-    let nothing = ndarray::Array3::from_elem((2, 3, 40), f64::NAN);
-    file.dataset("intensity").unwrap().write(&nothing).unwrap();
-    file.close().unwrap();
+    write_cube_of(
+        f64::NAN,
+        &desk.path("c.h5"),
+        &wavelength_nm,
+        (2, 3, 40),
+        UNIT,
+    );
     map_refuses(&desk, &["c.h5", "none of the 6 spectra", "NaN", "hint:"]);
 }

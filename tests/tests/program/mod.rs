@@ -151,6 +151,17 @@ impl Desk {
 
 /// Writes datasets of a cube as they are given, right or wrong.
 pub fn write_cube(path: &Path, wavelength_nm: &[f64], shape: (usize, usize, usize), units: &str) {
+    write_cube_of(26000.0, path, wavelength_nm, shape, units);
+}
+
+/// The same with one intensity everywhere.
+pub fn write_cube_of(
+    intensity: f64,
+    path: &Path,
+    wavelength_nm: &[f64],
+    shape: (usize, usize, usize),
+    units: &str,
+) {
     let file = hdf5::File::create(path).unwrap();
     let wavelength = file
         .new_dataset_builder()
@@ -161,7 +172,7 @@ pub fn write_cube(path: &Path, wavelength_nm: &[f64], shape: (usize, usize, usiz
     attribute(&wavelength, "medium", "vacuum");
     let intensity = file
         .new_dataset_builder()
-        .with_data(&Array3::from_elem(shape, 26000.0))
+        .with_data(&Array3::from_elem(shape, intensity))
         .create("intensity")
         .unwrap();
     attribute(&intensity, "units", units);
